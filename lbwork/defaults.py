@@ -18,3 +18,56 @@ SYMMETRY_TOLERANCE: Final = 1e-10
 # zero modes
 ZERO_MODE_TOLERANCE: Final = 1e-10
 """An eigenvalue below this times the norm of the generator counts as a zero mode."""
+
+# levels
+LEVEL_DEGENERACY_TOLERANCE: Final = 1e-9
+"""Levels closer than this times the radius of their spectrum are one degenerate level."""
+
+LEVEL_AXIS_TOLERANCE: Final = 1e-9
+"""A level whose distance from the real axis is below this times the radius of the spectrum is real;
+a spectrum whose width is below it lies on a line."""
+
+LEVEL_CONJUGATION_TOLERANCE: Final = 1e-7
+"""A spectrum is closed under conjugation when every mirror level is found within this times the
+radius; wider than the degeneracy tolerance, since generators are non-normal."""
+
+LEVEL_ERROR_SHARE: Final = 0.1
+"""A level is used only if its error bound is below this share of its nearest-neighbour distance."""
+
+LEVEL_REFUSED_SHARE: Final = 0.2
+"""A sequence with a larger share of unreliable levels is refused as a whole."""
+
+LEVEL_EDGE_NEIGHBOURS: Final = 24
+"""Neighbours that measure the local density and how one-sided the surroundings of a level are."""
+
+LEVEL_EDGE_OFFSET: Final = 0.28
+"""Bulk cut: a level is at the edge when the centroid of its neighbours is farther from it than this
+times the radius they reach; in a flat disc this cuts a rim 1.2 mean spacings deep."""
+
+LEVEL_REAL_BAND: Final = 2.0
+"""Reference levels of a real matrix lie at least this many local mean spacings off the real axis."""
+
+LEVEL_LINE_CUT: Final = 0.05
+"""Share of the levels dropped at each end of a spectrum on a line."""
+
+LEVEL_SEQUENCE_MINIMUM: Final = 60
+"""Distinct levels below which a sequence is left out."""
+
+LEVEL_VERDICT_MINIMUM: Final = 100
+"""Reference levels below which the verdict is undecided."""
+
+LEVEL_CONFIDENCE_MINIMUM: Final = 0.6
+"""Posterior probability below which the verdict is undecided."""
+
+LEVEL_FIT_MINIMUM: Final = 1e-3
+"""Goodness-of-fit probability below which a reference does not describe the levels."""
+
+LEVEL_DISTANCE_RATIO: Final = 0.3
+"""A reference that fails the fit in detail is still named when it is closer than this share of the
+distance of the next family: finite spectra are never exactly in the limit of large matrices."""
+
+LEVEL_BOOTSTRAP_SAMPLES: Final = 1000
+"""Block-bootstrap samples behind each interval."""
+
+LEVEL_BOOTSTRAP_BLOCK: Final = 16
+"""Neighbouring levels that are redrawn together, since they share neighbours."""
