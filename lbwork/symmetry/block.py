@@ -7,14 +7,14 @@ non-zeros of those rows and the whole superoperator is never formed.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
 import scipy.sparse as sparse
 
 from lbwork.errors import SymmetryError
-from lbwork.symmetry.canonical import CanonicalTerms
+from lbwork.symmetry.canonical import CanonicalTerms, local_digits
 from lbwork.symmetry.monomials import MonomialMap
 from lbwork.symmetry.sector_basis import digits_of, numbers_of
 
@@ -68,36 +68,38 @@ class OrbitBasis:
 
 def rows_of_terms(
     terms: CanonicalTerms, states: np.ndarray, sites: int, base: int
-) -> Iterator[tuple[np.ndarray, np.ndarray, np.ndarray]]:
-    """Non-zeros of L in the rows ``states``: yields (row positions, column states, values).
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Non-zeros of L in the rows ``states``: (row positions, column states, values), unsorted.
 
     The identity component of L is not among ``terms`` and must be added by the caller.
     """
     digits = digits_of(states, sites, base)
+    parts: list[tuple[np.ndarray, np.ndarray, np.ndarray]] = []
     for support, matrix in terms.items():
         compressed = sparse.csr_matrix(matrix)
         count = len(support)
         powers = base ** np.arange(count - 1, -1, -1)
-        weights = [np.uint64(base) ** np.uint64(sites - 1 - site) for site in support]
-        local = digits[:, list(support)] @ powers
-        rest = states.copy()
-        for weight, site in zip(weights, support, strict=True):
-            rest -= digits[:, site].astype(np.uint64) * weight
-        placed = np.zeros(matrix.shape[0], dtype=np.uint64)
-        for weight, unit in zip(weights, powers, strict=True):
-            placed += ((np.arange(matrix.shape[0]) // unit) % base).astype(np.uint64) * weight
+        weights = np.array([base ** (sites - 1 - site) for site in support], dtype=np.int64)
+        local_of = digits[:, list(support)]
+        local = local_of @ powers
+        rest = states.astype(np.int64) - local_of @ weights
+        placed = local_digits(base, count) @ weights
         lengths = np.diff(compressed.indptr)[local]
-        starts = compressed.indptr[local]
-        largest = max(int(lengths.max(initial=0)), 1)
-        step = max(_CHUNK_ENTRIES // largest, 1)
-        for begin in range(0, states.size, step):
-            part = slice(begin, begin + step)
-            width = lengths[part]
-            rows = np.repeat(np.arange(begin, begin + width.size), width)
-            within = np.arange(rows.size) - np.repeat(np.cumsum(width) - width, width)
-            entries = starts[rows] + within
-            columns = rest[rows] + placed[compressed.indices[entries]]
-            yield rows, columns, compressed.data[entries]
+        rows = np.repeat(np.arange(states.size), lengths)
+        within = np.arange(rows.size) - np.repeat(np.cumsum(lengths) - lengths, lengths)
+        entries = compressed.indptr[local][rows] + within
+        columns = rest[rows] + placed[compressed.indices[entries]]
+        parts.append((rows, columns.astype(np.uint64), compressed.data[entries]))
+    if not parts:
+        nothing = np.zeros(0, dtype=np.int64)
+        return nothing, nothing.astype(np.uint64), nothing.astype(complex)
+    rows_all, columns_all, values_all = (np.concatenate(arrays) for arrays in zip(*parts, strict=True))
+    return rows_all, columns_all, values_all
+
+
+def _entries_per_row(terms: CanonicalTerms) -> int:
+    """Largest possible number of non-zeros that all terms together put into one row."""
+    return 1 + sum(int((matrix != 0).sum(axis=1).max()) for matrix in terms.values())
 
 
 def assemble_block(
@@ -105,15 +107,21 @@ def assemble_block(
 ) -> sparse.csr_matrix:
     """Complex sector matrix B with ``L V = V B``; ``constant`` is the identity component of L."""
     dimension = orbit_basis.dimension
-    block = sparse.csr_matrix((dimension, dimension), dtype=complex)
-    for rows, columns, values in rows_of_terms(
-        terms, orbit_basis.states, orbit_basis.sites, orbit_basis.base
-    ):
-        index, amplitudes = orbit_basis.locate(columns)
-        entries = values * amplitudes / orbit_basis.amplitudes[rows]
-        block = block + sparse.csr_matrix(
-            (entries, (rows, index)), shape=(dimension, dimension), dtype=complex
+    step = max(_CHUNK_ENTRIES // _entries_per_row(terms), 1)
+    slabs = []
+    for begin in range(0, dimension, step):
+        states = orbit_basis.states[begin : begin + step]
+        rows, columns, values = rows_of_terms(
+            terms, states, orbit_basis.sites, orbit_basis.base
         )
+        index, amplitudes = orbit_basis.locate(columns)
+        entries = values * amplitudes / orbit_basis.amplitudes[begin + rows]
+        slabs.append(
+            sparse.csr_matrix(
+                (entries, (rows, index)), shape=(states.size, dimension), dtype=complex
+            )
+        )
+    block = sparse.vstack(slabs, format="csr")
     block = block + constant * sparse.identity(dimension, dtype=complex, format="csr")
     largest = float(np.abs(block.data).max(initial=0.0))
     block.data[np.abs(block.data) < 1e-15 * largest] = 0
@@ -219,13 +227,13 @@ def check_block(
         states = numbers_of(operation.apply(digits)[0], orbit_basis.base)
         index, amplitudes = orbit_basis.locate(states)
         result = constant * amplitudes * vector[index]
-        for rows, columns, values in rows_of_terms(
+        rows, columns, values = rows_of_terms(
             terms, states, orbit_basis.sites, orbit_basis.base
-        ):
-            column_index, column_amplitudes = orbit_basis.locate(columns)
-            contribution = values * column_amplitudes * vector[column_index]
-            result += np.bincount(rows, contribution.real, states.size)
-            result += 1j * np.bincount(rows, contribution.imag, states.size)
+        )
+        column_index, column_amplitudes = orbit_basis.locate(columns)
+        contribution = values * column_amplitudes * vector[column_index]
+        result += np.bincount(rows, contribution.real, states.size)
+        result += 1j * np.bincount(rows, contribution.imag, states.size)
         mismatch = np.abs(result - amplitudes * product[index])
         worst = max(worst, float(mismatch.max(initial=0.0)) / scale)
     return worst
