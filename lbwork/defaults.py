@@ -59,6 +59,10 @@ LEVEL_VERDICT_MINIMUM: Final = 100
 LEVEL_CONFIDENCE_MINIMUM: Final = 0.6
 """Posterior probability below which the verdict is undecided."""
 
+LEVEL_KRAMERS_WEIGHT: Final = 2.0
+"""Prior weight of class AII-dagger, relative to every other family, when all levels are exactly
+twofold: it forces the doublets, the others need two sectors that share one spectrum."""
+
 LEVEL_FIT_MINIMUM: Final = 1e-3
 """Goodness-of-fit probability below which a reference does not describe the levels."""
 

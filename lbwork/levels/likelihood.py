@@ -1,0 +1,115 @@
+"""How well each reference ensemble explains the averages of the per-level descriptors.
+
+The average x of the descriptors over N reference levels is close to normal, with the mean mu of the
+ensemble and the covariance C / N + S: C is the covariance per effectively independent level, so
+that correlations between near levels are counted once, and S covers the shifts by smooth density
+gradients. Hence log L = log normal(x; mu, C / N + S), a synthetic likelihood in the sense of
+S. N. Wood, Nature 466, 1102 (2010); from memory.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+from scipy.linalg import cho_factor, cho_solve
+from scipy.special import logsumexp
+from scipy.stats import chi2
+
+from lbwork import defaults
+from lbwork.levels.records import SequenceStatistics
+from lbwork.levels.references import Reference, reference, reference_names, systematic
+
+__all__ = ["Evidence", "evidence", "scatter_probability"]
+
+
+@dataclass(frozen=True, eq=False)
+class Evidence:
+    """References of one geometry against the levels of some sequences.
+
+    log_likelihood: per reference. distance: squared Mahalanobis distance per reference.
+    posterior: probability per family, equal priors for families and for references within one; when
+    every level is exactly twofold, class AII-dagger has the prior weight
+    :data:`lbwork.defaults.LEVEL_KRAMERS_WEIGHT`.
+    closest: name of the reference of highest likelihood within the most probable family.
+    fit: probability of a larger distance than the closest one's.
+    contrast: distance of the closest reference over that of the best of all other families.
+    """
+
+    log_likelihood: dict[str, float]
+    distance: dict[str, float]
+    posterior: dict[str, float]
+    closest: str
+    fit: float
+    contrast: float
+
+    @property
+    def family(self) -> str:
+        """The most probable family."""
+        return max(self.posterior, key=lambda name: self.posterior[name])
+
+
+def _score(
+    mean: npt.NDArray[np.float64], count: int, one: Reference, floor: npt.NDArray[np.float64]
+) -> tuple[float, float]:
+    """Log-likelihood and squared distance of one reference."""
+    # The table itself is an average over a finite sample.
+    covariance = one.covariance * (1.0 / count + 1.0 / one.levels) + floor
+    factor = cho_factor(covariance, lower=True)
+    difference = mean - one.mean
+    distance = float(difference @ cho_solve(factor, difference))
+    log_determinant = 2.0 * float(np.sum(np.log(np.diag(factor[0]))))
+    constant = mean.size * np.log(2.0 * np.pi)
+    return -0.5 * (distance + log_determinant + constant), distance
+
+
+def evidence(sequences: tuple[SequenceStatistics, ...]) -> Evidence:
+    """Weigh all references of the geometry the (used, equal-geometry) `sequences` live in."""
+    geometry = sequences[0].geometry
+    descriptors = np.concatenate([one.descriptors for one in sequences])
+    mean, count = np.mean(descriptors, axis=0), len(descriptors)
+    floor = systematic(geometry)
+    names = reference_names(geometry)
+    scores = {name: _score(mean, count, reference(name), floor) for name in names}
+    log_likelihood = {name: score for name, (score, _) in scores.items()}
+    distance = {name: value for name, (_, value) in scores.items()}
+
+    members: dict[str, list[str]] = {}
+    for name in names:
+        members.setdefault(reference(name).family, []).append(name)
+    weight = {
+        family: float(logsumexp([log_likelihood[name] for name in group]) - np.log(len(group)))
+        for family, group in members.items()
+    }
+    if "AII+" in weight and all(one.doubled for one in sequences):
+        weight["AII+"] += float(np.log(defaults.LEVEL_KRAMERS_WEIGHT))
+    total = logsumexp(list(weight.values()))
+    posterior = {family: float(np.exp(value - total)) for family, value in weight.items()}
+    best = max(weight, key=lambda family: weight[family])
+    closest = max(members[best], key=lambda name: log_likelihood[name])
+    others = [distance[name] for name in names if reference(name).family != best]
+    return Evidence(
+        log_likelihood=log_likelihood,
+        distance=distance,
+        posterior=posterior,
+        closest=closest,
+        fit=float(chi2.sf(distance[closest], mean.size)),
+        contrast=float(np.sqrt(distance[closest] / min(others))),
+    )
+
+
+def scatter_probability(sequences: tuple[SequenceStatistics, ...], closest: str) -> float:
+    """Probability of the scatter between sequences if all follow one ensemble; 1 for one sequence.
+
+    chi^2 = sum_i N_i (x_i - x)^T C^-1 (x_i - x) with p (k - 1) degrees of freedom, C that of the
+    reference `closest`.
+    """
+    if len(sequences) < 2:
+        return 1.0
+    counts = np.array([one.levels_used for one in sequences])
+    means = np.array([np.mean(one.descriptors, axis=0) for one in sequences])
+    centred = means - np.average(means, axis=0, weights=counts)
+    whitened = np.linalg.solve(reference(closest).covariance, centred.T)
+    value = float(np.sum(counts * np.einsum("ip,pi->i", centred, whitened)))
+    return float(chi2.sf(value, means.shape[1] * (len(sequences) - 1)))

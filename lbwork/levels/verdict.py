@@ -1,0 +1,286 @@
+"""From statistics to a verdict with its confidence, in numbers and in words."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+import numpy.typing as npt
+
+from lbwork import defaults
+from lbwork.errors import UsageError
+from lbwork.levels.intervals import Interval, mean_with_interval
+from lbwork.levels.likelihood import Evidence, evidence, scatter_probability
+from lbwork.levels.records import LevelOptions, LevelStatistics, SequenceStatistics
+from lbwork.levels.wording import finding, reason_undecided
+
+__all__ = ["SequenceVerdict", "Verdict", "judge_levels"]
+
+_UNDECIDED = "undecided"
+_SURE = 0.95
+_DEGENERATE_SHARE = 0.2
+
+
+@dataclass(frozen=True)
+class SequenceVerdict:
+    """Verdict on one sequence alone; `refused` says why it was left out, None if it was used."""
+
+    label: str
+    expected_class: str
+    verdict: str
+    confidence: float
+    levels_used: int
+    mean_ratio: float | None
+    refused: str | None
+
+    def to_dict(self) -> dict[str, Any]:
+        """JSON-able fields."""
+        return dict(vars(self))
+
+
+@dataclass(frozen=True)
+class Verdict:
+    """What the level statistics of a run say.
+
+    verdict: poisson, A, AI+, AII+, 1d-poisson, 1d-GOE, 1d-GUE, 1d-GSE, mixture or undecided.
+    confidence: posterior probability of the most probable family, 0 if there were no levels; for
+    the priors see :class:`lbwork.levels.likelihood.Evidence`. mean_ratio: of |z|, on a line of
+    min(r, 1/r). mean_cosine: of cos arg z, None on a line. log_likelihood: per reference.
+    posterior: per family. closest: reference of highest likelihood in the most probable family.
+    fit: goodness-of-fit probability of the closest reference. sequences_agree: probability of the
+    scatter between sequences, if they follow one ensemble. disagreeing: labels of sequences whose
+    own, sure verdict is another one.
+    """
+
+    verdict: str
+    confidence: float
+    levels_used: int
+    mean_ratio: Interval | None
+    mean_cosine: Interval | None
+    log_likelihood: dict[str, float]
+    posterior: dict[str, float]
+    closest: str | None
+    fit: float
+    sequences_agree: float
+    disagreeing: tuple[str, ...]
+    expected_class: str
+    degenerate_levels: int
+    unreliable_levels: int
+    bulk_cut: str
+    sentence: str
+    sequences: tuple[SequenceVerdict, ...]
+
+    def to_dict(self) -> dict[str, Any]:
+        """JSON-able document; intervals as {value, low, high} or None."""
+        document = dict(vars(self))
+        for name in ("mean_ratio", "mean_cosine"):
+            interval: Interval | None = document[name]
+            document[name] = None if interval is None else interval.to_dict()
+        document["disagreeing"] = list(self.disagreeing)
+        document["sequences"] = [one.to_dict() for one in self.sequences]
+        return document
+
+    def __str__(self) -> str:
+        lines = [
+            f"verdict      {self.verdict} (confidence {self.confidence:.3f})",
+            f"levels used  {self.levels_used}",
+        ]
+        if self.mean_ratio is not None:
+            lines.append(f"<r>          {self.mean_ratio}")
+        if self.mean_cosine is not None:
+            lines.append(f"<cos theta>  {self.mean_cosine}")
+        return "\n".join([*lines, self.sentence])
+
+
+def judge_levels(statistics: LevelStatistics) -> Verdict:
+    """Verdict on all used sequences together and on each alone.
+
+    Sequences are pooled when they share geometry and expected class; the verdict is that of the
+    pool with most levels, others are named in the sentence when they differ. Pooling N-weighted
+    averages equals adding the log-likelihoods of the sequences up to terms that are the same for
+    every reference of one covariance.
+    """
+    options = statistics.options
+    singles = tuple(_single(one, options) for one in statistics.sequences)
+    pools: dict[tuple[str, str], list[SequenceStatistics]] = {}
+    for one in statistics.used:
+        pools.setdefault((one.geometry, one.expected_class), []).append(one)
+    ranked = sorted(pools.values(), key=lambda pool: -sum(one.levels_used for one in pool))
+    if not ranked:
+        return _nothing(statistics, singles)
+    main = tuple(ranked[0])
+    weighed = evidence(main)
+    levels = sum(one.levels_used for one in main)
+    verdict, confidence = _decide(weighed, levels, options)
+    disagreeing = tuple(
+        single.label
+        for single, one in zip(singles, statistics.sequences, strict=True)
+        if verdict != _UNDECIDED
+        and one.geometry == main[0].geometry
+        and one.expected_class == main[0].expected_class
+        and single.verdict not in (_UNDECIDED, verdict)
+        and single.confidence >= _SURE
+    )
+    expected = main[0].expected_class
+    sentences = [_headline(verdict, weighed, levels, expected, options)]
+    sentences += [_other_pool(tuple(pool), options) for pool in ranked[1:]]
+    sentences += _remarks(statistics, weighed, verdict, disagreeing)
+    ratios = tuple(np.abs(one.ratios) for one in main)
+    return Verdict(
+        verdict=verdict,
+        confidence=confidence,
+        levels_used=levels,
+        mean_ratio=mean_with_interval(ratios, options.seed),
+        mean_cosine=_mean_cosine(main, options.seed),
+        log_likelihood=weighed.log_likelihood,
+        posterior=weighed.posterior,
+        closest=weighed.closest,
+        fit=weighed.fit,
+        sequences_agree=scatter_probability(main, weighed.closest),
+        disagreeing=disagreeing,
+        expected_class=expected,
+        degenerate_levels=sum(one.degenerate_levels for one in statistics.sequences),
+        unreliable_levels=sum(one.unreliable_levels for one in statistics.sequences),
+        bulk_cut=_bulk_cut(main, options),
+        sentence=" ".join(sentences),
+        sequences=singles,
+    )
+
+
+def _fits(weighed: Evidence) -> bool:
+    return (
+        weighed.fit >= defaults.LEVEL_FIT_MINIMUM
+        or weighed.contrast <= defaults.LEVEL_DISTANCE_RATIO
+    )
+
+
+def _decide(weighed: Evidence, levels: int, options: LevelOptions) -> tuple[str, float]:
+    confidence = weighed.posterior[weighed.family]
+    decided = (
+        levels >= options.verdict_minimum
+        and _fits(weighed)
+        and confidence >= options.confidence_minimum
+    )
+    return (weighed.family if decided else _UNDECIDED), confidence
+
+
+def _single(one: SequenceStatistics, options: LevelOptions) -> SequenceVerdict:
+    verdict, confidence, mean = _UNDECIDED, 0.0, None
+    if one.refused is None:
+        verdict, confidence = _decide(evidence((one,)), one.levels_used, options)
+        mean = float(np.mean(np.abs(one.ratios)))
+    return SequenceVerdict(
+        label=one.label,
+        expected_class=one.expected_class,
+        verdict=verdict,
+        confidence=confidence,
+        levels_used=one.levels_used,
+        mean_ratio=mean,
+        refused=one.refused,
+    )
+
+
+def _headline(
+    verdict: str, weighed: Evidence, levels: int, expected: str, options: LevelOptions
+) -> str:
+    if verdict != _UNDECIDED:
+        text = finding(verdict, weighed.closest, expected)
+        return f"{text[0].upper()}{text[1:]} ({levels} reference levels)."
+    order = sorted(weighed.posterior, key=lambda family: -weighed.posterior[family])
+    text = reason_undecided(
+        levels,
+        options.verdict_minimum,
+        (order[0], order[1]),
+        weighed.posterior[order[0]],
+        _fits(weighed),
+    )
+    return f"{text[0].upper()}{text[1:]}."
+
+
+def _other_pool(pool: tuple[SequenceStatistics, ...], options: LevelOptions) -> str:
+    levels = sum(one.levels_used for one in pool)
+    verdict, _ = _decide(evidence(pool), levels, options)
+    where = (
+        "on a line" if pool[0].geometry == "line" else f"expecting class {pool[0].expected_class}"
+    )
+    return f"Sequences {where} ({levels} levels), judged apart: {verdict}."
+
+
+def _remarks(
+    statistics: LevelStatistics, weighed: Evidence, verdict: str, disagreeing: tuple[str, ...]
+) -> list[str]:
+    """Caveats: fit in detail, disagreement, degeneracies, refused sequences, finite size."""
+    remarks = []
+    if verdict != _UNDECIDED and weighed.fit < defaults.LEVEL_FIT_MINIMUM:
+        remarks.append(
+            "Small deviations from the reference are significant, as finite spectra often show."
+        )
+    if disagreeing:
+        remarks.append(f"Sequences that disagree on their own: {', '.join(disagreeing)}.")
+    given = sum(one.levels for one in statistics.sequences)
+    if all(one.doubled for one in statistics.used):
+        remarks.append(
+            "Every level is twofold degenerate: Kramers pairs of class AII-dagger, or two sectors "
+            "with one spectrum."
+        )
+    elif sum(one.degenerate_share * one.levels for one in statistics.used) > (
+        _DEGENERATE_SHARE * given
+    ):
+        remarks.append(
+            "A large share of the levels is exactly degenerate: a sign of a non-Abelian symmetry "
+            "or of one not resolved."
+        )
+    refused = [one for one in statistics.sequences if one.refused is not None]
+    if refused:
+        remarks.append(f"{len(refused)} of {len(statistics.sequences)} sequences were left out.")
+    remarks.append("Finite-size statistics: compare another chain length before concluding.")
+    return remarks
+
+
+def _mean_cosine(pool: tuple[SequenceStatistics, ...], seed: int) -> Interval | None:
+    if pool[0].geometry == "line":
+        return None
+    cosines: tuple[npt.NDArray[np.float64], ...] = tuple(
+        np.cos(np.angle(one.ratios)) for one in pool
+    )
+    return mean_with_interval(cosines, seed)
+
+
+def _bulk_cut(pool: tuple[SequenceStatistics, ...], options: LevelOptions) -> str:
+    dropped = sum(one.edge_levels for one in pool)
+    if pool[0].geometry == "line":
+        return f"{dropped} levels: {options.line_cut:.0%} at each end"
+    return (
+        f"{dropped} levels: centroid of the {defaults.LEVEL_EDGE_NEIGHBOURS} nearest farther than "
+        f"{options.edge_offset:g} of their reach, or within {options.real_band:g} mean spacings of "
+        "the real axis of a real matrix"
+    )
+
+
+def _nothing(statistics: LevelStatistics, singles: tuple[SequenceVerdict, ...]) -> Verdict:
+    reasons = "; ".join(
+        sorted({one.refused for one in statistics.sequences if one.refused is not None})
+    )
+    classes = {one.expected_class for one in statistics.sequences}
+    if not classes:
+        raise UsageError("no level sequence to judge; pass at least one")
+    return Verdict(
+        verdict=_UNDECIDED,
+        confidence=0.0,
+        levels_used=0,
+        mean_ratio=None,
+        mean_cosine=None,
+        log_likelihood={},
+        posterior={},
+        closest=None,
+        fit=0.0,
+        sequences_agree=1.0,
+        disagreeing=(),
+        expected_class=statistics.sequences[0].expected_class,
+        degenerate_levels=sum(one.degenerate_levels for one in statistics.sequences),
+        unreliable_levels=sum(one.unreliable_levels for one in statistics.sequences),
+        bulk_cut="no sequence was used",
+        sentence=f"Undecided: no sequence could be used ({reasons}).",
+        sequences=singles,
+    )
