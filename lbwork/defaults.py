@@ -66,9 +66,10 @@ twofold: it forces the doublets, the others need two sectors that share one spec
 LEVEL_FIT_MINIMUM: Final = 1e-3
 """Goodness-of-fit probability below which a reference does not describe the levels."""
 
-LEVEL_DISTANCE_RATIO: Final = 0.3
+LEVEL_DISTANCE_RATIO: Final = 0.4
 """A reference that fails the fit in detail is still named when it is closer than this share of the
-distance of the next family: finite spectra are never exactly in the limit of large matrices."""
+distance of the next single ensemble: finite spectra are never exactly in the limit of large
+matrices."""
 
 LEVEL_BOOTSTRAP_SAMPLES: Final = 1000
 """Block-bootstrap samples behind each interval."""

@@ -34,7 +34,8 @@ class Evidence:
     :data:`lbwork.defaults.LEVEL_KRAMERS_WEIGHT`.
     closest: name of the reference of highest likelihood within the most probable family.
     fit: probability of a larger distance than the closest one's.
-    contrast: distance of the closest reference over that of the best of all other families.
+    contrast: distance of the closest reference over that of the best single ensemble of another
+    family; superpositions are left out, since many blocks are as good as independent levels.
     """
 
     log_likelihood: dict[str, float]
@@ -88,7 +89,7 @@ def evidence(sequences: tuple[SequenceStatistics, ...]) -> Evidence:
     posterior = {family: float(np.exp(value - total)) for family, value in weight.items()}
     best = max(weight, key=lambda family: weight[family])
     closest = max(members[best], key=lambda name: log_likelihood[name])
-    others = [distance[name] for name in names if reference(name).family != best]
+    others = [distance[name] for name in names if reference(name).family not in (best, "mixture")]
     return Evidence(
         log_likelihood=log_likelihood,
         distance=distance,

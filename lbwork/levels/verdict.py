@@ -20,6 +20,7 @@ __all__ = ["SequenceVerdict", "Verdict", "judge_levels"]
 _UNDECIDED = "undecided"
 _SURE = 0.95
 _DEGENERATE_SHARE = 0.2
+_INDEPENDENT_RATIO = {"poisson": 2.0 / 3.0, "1d-poisson": 2.0 * np.log(2.0) - 1.0}
 
 
 @dataclass(frozen=True)
@@ -123,15 +124,17 @@ def judge_levels(statistics: LevelStatistics) -> Verdict:
         and single.confidence >= _SURE
     )
     expected = main[0].expected_class
+    mean_ratio = mean_with_interval(tuple(np.abs(one.ratios) for one in main), options.seed)
     sentences = [_headline(verdict, weighed, levels, expected, options)]
     sentences += [_other_pool(tuple(pool), options) for pool in ranked[1:]]
-    sentences += _remarks(statistics, weighed, verdict, disagreeing)
-    ratios = tuple(np.abs(one.ratios) for one in main)
+    if weighed.fit < defaults.LEVEL_FIT_MINIMUM:
+        sentences.append(_misfit(weighed, mean_ratio, verdict))
+    sentences += _remarks(statistics, disagreeing)
     return Verdict(
         verdict=verdict,
         confidence=confidence,
         levels_used=levels,
-        mean_ratio=mean_with_interval(ratios, options.seed),
+        mean_ratio=mean_ratio,
         mean_cosine=_mean_cosine(main, options.seed),
         log_likelihood=weighed.log_likelihood,
         posterior=weighed.posterior,
@@ -207,15 +210,24 @@ def _other_pool(pool: tuple[SequenceStatistics, ...], options: LevelOptions) -> 
     return f"Sequences {where} ({levels} levels), judged apart: {verdict}."
 
 
-def _remarks(
-    statistics: LevelStatistics, weighed: Evidence, verdict: str, disagreeing: tuple[str, ...]
-) -> list[str]:
-    """Caveats: fit in detail, disagreement, degeneracies, refused sequences, finite size."""
-    remarks = []
-    if verdict != _UNDECIDED and weighed.fit < defaults.LEVEL_FIT_MINIMUM:
-        remarks.append(
-            "Small deviations from the reference are significant, as finite spectra often show."
+def _misfit(weighed: Evidence, mean_ratio: Interval, verdict: str) -> str:
+    """What to think of a closest reference that does not describe the levels in detail."""
+    if mean_ratio.high < _INDEPENDENT_RATIO.get(weighed.closest, 0.0):
+        return (
+            "The levels lie even closer together than independent ones, as those of free or nearly "
+            "degenerate generators do: no sign of repulsion."
         )
+    if verdict == _UNDECIDED:
+        return f"The fit of {weighed.closest} has probability {weighed.fit:.1e}."
+    return (
+        f"The levels deviate from {weighed.closest} in detail (probability {weighed.fit:.1e}) but "
+        "are far closer to it than to any other ensemble."
+    )
+
+
+def _remarks(statistics: LevelStatistics, disagreeing: tuple[str, ...]) -> list[str]:
+    """Caveats: disagreement, degeneracies, refused sequences, finite size."""
+    remarks = []
     if disagreeing:
         remarks.append(f"Sequences that disagree on their own: {', '.join(disagreeing)}.")
     given = sum(one.levels for one in statistics.sequences)

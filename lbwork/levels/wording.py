@@ -44,7 +44,7 @@ def finding(family: str, closest: str, expected: str) -> str:
         return (
             f"a superposition of independent chaotic blocks, closest to {blocks} of class "
             f"{_NAMES.get(name, name.removeprefix('1d-'))}: an unresolved symmetry is likely, "
-            "resolve it before judging"
+            "resolve it before judging; a crossover between regular and chaotic looks similar"
         )
     if family.startswith("1d-"):
         return f"levels on a line with the repulsion of the {family.removeprefix('1d-')}: chaotic"

@@ -143,6 +143,15 @@ def test_a_lattice_fits_no_reference() -> None:
     assert "no reference describes" in verdict.sentence
 
 
+def test_levels_that_cluster_are_said_to_cluster() -> None:
+    generator = np.random.default_rng(27)
+    parents = independent_levels(250, generator)
+    steps = generator.normal(scale=0.01, size=(2, 250))
+    verdict = judge(np.concatenate([parents, parents + steps[0] + 1j * steps[1]]))
+    assert verdict.verdict in ("poisson", "undecided")
+    assert "closer together than independent ones" in verdict.sentence
+
+
 @pytest.mark.parametrize("name", ["1d-poisson", "1d-GOE", "1d-GUE", "1d-GSE"])
 def test_lines_are_named(name: str) -> None:
     verdict = judge(*spectra(name, 1, 800, seed=19))
