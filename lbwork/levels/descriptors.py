@@ -24,6 +24,7 @@ LINE_NAMES = ("r", "r2", "double", "double2", "triple", "triple2")
 _FIELD_NEIGHBOURS = 12
 _FIELD_SURROUNDINGS = 24
 _DENSITY_NEIGHBOURS = 8
+_SMALLEST_SPACING = 0.02  # keeps a few nearly degenerate pairs from ruling the mean of log s
 
 
 def local_field(near: Neighbourhood) -> npt.NDArray[np.complex128]:
@@ -54,7 +55,7 @@ def plane_descriptors(near: Neighbourhood) -> npt.NDArray[np.float64]:
             np.cos(2.0 * angle),
             spacing,
             spacing**2,
-            np.log(spacing),
+            np.log(np.maximum(spacing, _SMALLEST_SPACING)),
             own,
         ]
     )
