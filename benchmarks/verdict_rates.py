@@ -4,8 +4,8 @@
 
 Each try is one matrix, and its spectrum is judged without knowledge of its class. The self-dual
 class has `size` independent levels (a matrix of twice the size), or half of them with
---small-self-dual (a matrix of the given size). Controls: independent levels, real matrices, and two
-superposed blocks.
+--small-self-dual (a matrix of the given size). Controls: independent levels, real matrices of twice
+the size (whose upper half plane is used), and two superposed blocks.
 """
 
 from __future__ import annotations
@@ -70,7 +70,9 @@ def main() -> int:
     failed = False
     for name in chosen.only or list(CASES):
         expected, _ = CASES[name]
-        doubled = name == "complex self-dual" and not chosen.small_self_dual
+        doubled = name == "real Ginibre" or (
+            name == "complex self-dual" and not chosen.small_self_dual
+        )
         started = time.perf_counter()
         verdicts = rate(name, chosen.size * (2 if doubled else 1), chosen.tries, chosen.seed)
         share = verdicts[expected] / chosen.tries
