@@ -76,3 +76,7 @@ LEVEL_BOOTSTRAP_SAMPLES: Final = 1000
 
 LEVEL_BOOTSTRAP_BLOCK: Final = 16
 """Neighbouring levels that are redrawn together, since they share neighbours."""
+
+# generator
+GENERATOR_TOLERANCE: Final = 1e-12
+"""Relative defect of trace, Hermiticity and positivity above which a generator is not certified."""
