@@ -1,10 +1,11 @@
-"""Matrix-free application of a generator to a density matrix, threads over rows.
+"""Matrix-free application of a generator to a density matrix, threads over blocks of rows.
 
 ``L(rho) = A rho + rho A^dag + sum_k l_k rho l_k^dag`` with sparse ``A`` and ``l_k`` of dimension
-``D = d**L`` (rates absorbed). One output row is made at a time: the left product adds scaled rows,
-the right product gathers within the finished row. Diagonal jumps are folded into one factor per
-element, ``sum_k l_k(i) l_k(j)*``. Besides input and output only row buffers and D x D-sparse
-operators are held, never a matrix of dimension ``D**2``.
+``D = d**L`` (rates absorbed). Everything diagonal is one factor per element,
+``W_ij = A_ii + A_jj* + sum_k l_k(i) l_k(j)*``, kept as one D x D array (real where possible). The
+left product adds scaled rows; the right product works on a transposed tile of a few rows, so that
+both run along contiguous memory. Besides input and output only W, tiles and D x D-sparse operators
+are held, never a matrix of dimension ``D**2``.
 """
 
 from __future__ import annotations
@@ -18,20 +19,24 @@ import scipy.sparse as sparse
 __all__ = ["ActionTables", "action_tables", "apply_tables"]
 
 
+TILE = 8
+
+
 @dataclass(frozen=True, eq=False)
 class ActionTables:
     """Flat arrays that the compiled kernel reads.
 
-    ``left``: csr arrays of A without its diagonal; ``diagonal``: diagonal of A, complex (D,);
-    ``factors``: diagonal jumps, complex (K, D); ``jumps``: csr arrays of the other jumps, stacked.
+    ``left``: csr arrays of A without its diagonal; ``weights``: W, float64 or complex128 (D, D);
+    ``jumps``: csr arrays of the off-diagonal jumps, stacked; ``entries``: the same jumps as (row,
+    column, conjugated value) lists with ``entry_pointers`` (K + 1,).
     """
 
     dimension: int
     left: tuple[np.ndarray, np.ndarray, np.ndarray]
-    diagonal: np.ndarray
-    factors: np.ndarray
+    weights: np.ndarray
     jumps: tuple[np.ndarray, np.ndarray, np.ndarray]
-    jump_count: int
+    entries: tuple[np.ndarray, np.ndarray, np.ndarray]
+    entry_pointers: np.ndarray
 
 
 def _csr_arrays(matrix: sparse.csr_matrix) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
@@ -40,6 +45,21 @@ def _csr_arrays(matrix: sparse.csr_matrix) -> tuple[np.ndarray, np.ndarray, np.n
         matrix.indices.astype(np.int32),
         np.ascontiguousarray(matrix.data, dtype=np.complex128),
     )
+
+
+def _weights(diagonal: np.ndarray, factors: list[np.ndarray]) -> np.ndarray:
+    """W, real when every entry is."""
+    real = bool(
+        np.all([np.all(factor.imag == 0) for factor in factors]) and np.all(diagonal.imag == 0)
+    )
+    if real:
+        weights = diagonal.real[:, None] + diagonal.real[None, :]
+        table = np.array([factor.real for factor in factors]).reshape(len(factors), diagonal.size)
+    else:
+        weights = diagonal[:, None] + diagonal.conj()[None, :]
+        table = np.array(factors, dtype=complex).reshape(len(factors), diagonal.size)
+    weights += table.T @ table.conj()
+    return np.ascontiguousarray(weights)
 
 
 def action_tables(a: sparse.csr_matrix, jumps: list[sparse.csr_matrix]) -> ActionTables:
@@ -55,61 +75,71 @@ def action_tables(a: sparse.csr_matrix, jumps: list[sparse.csr_matrix]) -> Actio
             factors.append(values)
         else:
             others.append(jump.tocsr())
-    stacked = (
-        sparse.vstack(others, format="csr")
-        if others
-        else sparse.csr_matrix((0, dimension), dtype=complex)
+    empty = sparse.csr_matrix((0, dimension), dtype=complex)
+    stacked = sparse.vstack(others, format="csr") if others else empty
+    lists = [jump.tocoo() for jump in others]
+    joined = (
+        np.concatenate([item.row for item in lists] or [np.zeros(0)]).astype(np.int32),
+        np.concatenate([item.col for item in lists] or [np.zeros(0)]).astype(np.int32),
+        np.concatenate([item.data.conj() for item in lists] or [np.zeros(0)]).astype(complex),
     )
+    pointers = np.cumsum([0, *(item.nnz for item in lists)]).astype(np.int64)
+    weights = _weights(diagonal, factors)
     return ActionTables(
-        dimension,
-        _csr_arrays(left),
-        diagonal,
-        np.array(factors, dtype=np.complex128).reshape(len(factors), dimension),
-        _csr_arrays(stacked),
-        len(others),
+        dimension, _csr_arrays(left), weights, _csr_arrays(stacked), joined, pointers
     )
+
+
+@numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
+def _right_product(tile_in, tile_out, a_ptr, a_col, a_val):  # pragma: no cover
+    for j in range(tile_in.shape[0]):
+        for b in range(TILE):
+            tile_out[j, b] = 0
+        for position in range(a_ptr[j], a_ptr[j + 1]):
+            value = a_val[position].conjugate()
+            column = a_col[position]
+            for b in range(TILE):
+                tile_out[j, b] += value * tile_in[column, b]
+
+
+@numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
+def _add_jumps(i, rho, row, j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr):  # pragma: no cover
+    dimension = rho.shape[0]
+    for k in range(e_ptr.size - 1):
+        for position in range(j_ptr[k * dimension + i], j_ptr[k * dimension + i + 1]):
+            value = j_val[position]
+            other = rho[j_col[position]]
+            for entry in range(e_ptr[k], e_ptr[k + 1]):
+                row[e_row[entry]] += value * e_val[entry] * other[e_col[entry]]
 
 
 @numba.njit(parallel=True, cache=True, fastmath={"nsz", "contract", "reassoc"})
-def _apply(rho, out, a_ptr, a_col, a_val, diagonal, factors, j_ptr, j_col, j_val, jump_count):
+def _apply(
+    rho, out, a_ptr, a_col, a_val, weights, j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr
+):  # pragma: no cover
     dimension = rho.shape[0]
-    for i in numba.prange(dimension):
-        row = np.empty(dimension, dtype=np.complex128)
-        source = rho[i]
-        own = diagonal[i]
-        for j in range(dimension):
-            row[j] = (own + diagonal[j].conjugate()) * source[j]
-        for k in range(factors.shape[0]):
-            weight = factors[k, i]
+    blocks = (dimension + TILE - 1) // TILE
+    for block in numba.prange(blocks):
+        first = block * TILE
+        rows = min(TILE, dimension - first)
+        tile_in = np.zeros((dimension, TILE), dtype=np.complex128)
+        tile_out = np.empty((dimension, TILE), dtype=np.complex128)
+        for b in range(rows):
             for j in range(dimension):
-                row[j] += weight * factors[k, j].conjugate() * source[j]
-        for position in range(a_ptr[i], a_ptr[i + 1]):
-            value = a_val[position]
-            other = rho[a_col[position]]
+                tile_in[j, b] = rho[first + b, j]
+        _right_product(tile_in, tile_out, a_ptr, a_col, a_val)
+        for b in range(rows):
+            i = first + b
+            row = out[i]
+            source = rho[i]
             for j in range(dimension):
-                row[j] += value * other[j]
-        for j in range(dimension):
-            total = 0j
-            for position in range(a_ptr[j], a_ptr[j + 1]):
-                total += a_val[position].conjugate() * source[a_col[position]]
-            row[j] += total
-        if jump_count:
-            moved = np.empty(dimension, dtype=np.complex128)
-            for k in range(jump_count):
-                start = k * dimension
-                first, last = j_ptr[start + i], j_ptr[start + i + 1]
-                if first == last:
-                    continue
-                moved[:] = 0
-                for position in range(first, last):
-                    value = j_val[position]
-                    other = rho[j_col[position]]
-                    for j in range(dimension):
-                        moved[j] += value * other[j]
+                row[j] = weights[i, j] * source[j] + tile_out[j, b]
+            for position in range(a_ptr[i], a_ptr[i + 1]):
+                value = a_val[position]
+                other = rho[a_col[position]]
                 for j in range(dimension):
-                    for position in range(j_ptr[start + j], j_ptr[start + j + 1]):
-                        row[j] += j_val[position].conjugate() * moved[j_col[position]]
-        out[i] = row
+                    row[j] += value * other[j]
+            _add_jumps(i, rho, row, j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr)
 
 
 def apply_tables(tables: ActionTables, rho: np.ndarray, out: np.ndarray | None = None) -> np.ndarray:
@@ -118,6 +148,6 @@ def apply_tables(tables: ActionTables, rho: np.ndarray, out: np.ndarray | None =
     if out is None:
         out = np.empty_like(rho)
     _apply(
-        rho, out, *tables.left, tables.diagonal, tables.factors, *tables.jumps, tables.jump_count
+        rho, out, *tables.left, tables.weights, *tables.jumps, *tables.entries, tables.entry_pointers
     )
     return out
