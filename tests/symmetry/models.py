@@ -14,7 +14,8 @@ DRIVE = (
 
 def chain(operator, jumps=(), *, sites=4, boundary="periodic", dimension=2, extra=()):
     """A chain with one bond operator, further Hamiltonian terms and jumps."""
-    hamiltonian = (Term(operator),) if operator else ()
+    nothing = isinstance(operator, str) and not operator
+    hamiltonian = () if nothing else (Term(operator),)
     return Model(
         name="test chain",
         sites=sites,
