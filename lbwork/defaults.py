@@ -45,7 +45,7 @@ LEVEL_EDGE_OFFSET: Final = 0.28
 times the radius they reach; in a flat disc this cuts a rim 1.2 mean spacings deep."""
 
 LEVEL_REAL_BAND: Final = 2.0
-"""Reference levels of a real matrix lie at least this many local mean spacings off the real axis."""
+"""Reference levels of a real matrix lie this many local mean spacings or more off the real axis."""
 
 LEVEL_LINE_CUT: Final = 0.05
 """Share of the levels dropped at each end of a spectrum on a line."""
@@ -71,6 +71,12 @@ LEVEL_DISTANCE_RATIO: Final = 0.4
 distance of the next single ensemble: finite spectra are never exactly in the limit of large
 matrices."""
 
+LEVEL_SURE_CONFIDENCE: Final = 0.95
+"""Probability from which the verdict on one sequence is held against that of the others."""
+
+LEVEL_SCATTER_MINIMUM: Final = 1e-6
+"""Probability of the scatter between sequences below which differing sure verdicts conflict."""
+
 LEVEL_BOOTSTRAP_SAMPLES: Final = 1000
 """Block-bootstrap samples behind each interval."""
 
@@ -80,3 +86,35 @@ LEVEL_BOOTSTRAP_BLOCK: Final = 16
 # generator
 GENERATOR_TOLERANCE: Final = 1e-12
 """Relative defect of trace, Hermiticity and positivity above which a generator is not certified."""
+
+# spectrum
+PART_DROP_TOLERANCE: Final = 1e-14
+"""Entries of a sector block below this times its norm are zero when it is split into parts."""
+
+DENSE_THREADS: Final = 1
+"""BLAS threads of a dense solve; fixed, since the number changes the last bits, and one is fastest
+on a loaded machine."""
+
+TRACE_TOLERANCE: Final = 1e-11
+"""Trace identities of a sector: error over sqrt(n) times the Frobenius norm (its square)."""
+
+LEVEL_RESIDUAL_TOLERANCE: Final = 1e-11
+"""Smallest singular value of B - lambda over the norm of B at sampled levels."""
+
+LEVEL_SAMPLES: Final = 3
+"""Levels of a sector whose residual is recomputed; one only where a sample costs seconds."""
+
+LEVEL_SAMPLES_CHEAP_DIMENSION: Final = 800
+"""Part size up to which all samples are drawn."""
+
+IDENTICAL_PART_DIMENSION: Final = 64
+"""Parts up to this size are compared byte by byte, so that identical ones are solved once."""
+
+DENSE_SECONDS_REAL: Final = 1.1e-9
+DENSE_SECONDS_COMPLEX: Final = 2.6e-9
+"""Seconds of a dense sector over the cube of its dimension, one core at about 10 Gflop/s."""
+
+DENSE_BYTES_REAL: Final = 48
+DENSE_BYTES_COMPLEX: Final = 52
+DENSE_BYTES_LINEAR: Final = 60_000
+"""Peak bytes of a dense sector: times the square, and times the dimension."""

@@ -5,6 +5,7 @@ into :func:`judge_levels`. The verdict compares averages of per-level quantities
 ensembles that went through the same cleaning and the same bulk cut.
 """
 
+from lbwork.levels.decision import SequenceVerdict
 from lbwork.levels.form_factor import dissipative_form_factor
 from lbwork.levels.intervals import Interval
 from lbwork.levels.records import (
@@ -15,7 +16,7 @@ from lbwork.levels.records import (
 )
 from lbwork.levels.references import reference, reference_density, reference_names
 from lbwork.levels.statistics import level_statistics
-from lbwork.levels.verdict import SequenceVerdict, Verdict, judge_levels
+from lbwork.levels.verdict import Verdict, judge_levels
 
 __all__ = [
     "Interval",

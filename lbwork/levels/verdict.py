@@ -10,34 +10,24 @@ import numpy.typing as npt
 
 from lbwork import defaults
 from lbwork.errors import UsageError
+from lbwork.levels.decision import (
+    UNDECIDED,
+    Agreement,
+    SequenceVerdict,
+    agreement,
+    decide,
+    fits,
+    single,
+)
 from lbwork.levels.intervals import Interval, mean_with_interval
-from lbwork.levels.likelihood import Evidence, evidence, scatter_probability
+from lbwork.levels.likelihood import Evidence, evidence
 from lbwork.levels.records import LevelOptions, LevelStatistics, SequenceStatistics
 from lbwork.levels.wording import finding, reason_undecided
 
-__all__ = ["SequenceVerdict", "Verdict", "judge_levels"]
+__all__ = ["Verdict", "judge_levels"]
 
-_UNDECIDED = "undecided"
-_SURE = 0.95
 _DEGENERATE_SHARE = 0.2
 _INDEPENDENT_RATIO = {"poisson": 2.0 / 3.0, "1d-poisson": 2.0 * np.log(2.0) - 1.0}
-
-
-@dataclass(frozen=True)
-class SequenceVerdict:
-    """Verdict on one sequence alone; `refused` says why it was left out, None if it was used."""
-
-    label: str
-    expected_class: str
-    verdict: str
-    confidence: float
-    levels_used: int
-    mean_ratio: float | None
-    refused: str | None
-
-    def to_dict(self) -> dict[str, Any]:
-        """JSON-able fields."""
-        return dict(vars(self))
 
 
 @dataclass(frozen=True)
@@ -51,7 +41,7 @@ class Verdict:
     posterior: per family. closest: reference of highest likelihood in the most probable family.
     fit: goodness-of-fit probability of the closest reference. sequences_agree: probability of the
     scatter between sequences, if they follow one ensemble. disagreeing: labels of sequences whose
-    own, sure verdict is another one.
+    own, sure verdict is another than that of most levels.
     """
 
     verdict: str
@@ -98,12 +88,12 @@ def judge_levels(statistics: LevelStatistics) -> Verdict:
     """Verdict on all used sequences together and on each alone.
 
     Sequences are pooled when they share geometry and expected class; the verdict is that of the
-    pool with most levels, others are named in the sentence when they differ. Pooling N-weighted
-    averages equals adding the log-likelihoods of the sequences up to terms that are the same for
-    every reference of one covariance.
+    pool with most levels, others are named in the sentence. Pooling N-weighted averages equals
+    adding the log-likelihoods of the sequences, up to terms that measure their scatter; when the
+    scatter is no accident and sure verdicts on single sequences differ, there is no verdict.
     """
     options = statistics.options
-    singles = tuple(_single(one, options) for one in statistics.sequences)
+    singles = tuple(single(one, options) for one in statistics.sequences)
     pools: dict[tuple[str, str], list[SequenceStatistics]] = {}
     for one in statistics.used:
         pools.setdefault((one.geometry, one.expected_class), []).append(one)
@@ -113,23 +103,17 @@ def judge_levels(statistics: LevelStatistics) -> Verdict:
     main = tuple(ranked[0])
     weighed = evidence(main)
     levels = sum(one.levels_used for one in main)
-    verdict, confidence = _decide(weighed, levels, options)
-    disagreeing = tuple(
-        single.label
-        for single, one in zip(singles, statistics.sequences, strict=True)
-        if verdict != _UNDECIDED
-        and one.geometry == main[0].geometry
-        and one.expected_class == main[0].expected_class
-        and single.verdict not in (_UNDECIDED, verdict)
-        and single.confidence >= _SURE
-    )
+    verdict, confidence = decide(weighed, levels, options)
+    agreed = agreement(main, weighed.closest, options)
+    if agreed.conflict:
+        verdict = UNDECIDED
     expected = main[0].expected_class
     mean_ratio = mean_with_interval(tuple(np.abs(one.ratios) for one in main), options.seed)
-    sentences = [_headline(verdict, weighed, levels, expected, options)]
+    sentences = [_headline(verdict, weighed, agreed, levels, expected, options)]
     sentences += [_other_pool(tuple(pool), options) for pool in ranked[1:]]
-    if weighed.fit < defaults.LEVEL_FIT_MINIMUM:
+    if weighed.fit < defaults.LEVEL_FIT_MINIMUM and not agreed.conflict:
         sentences.append(_misfit(weighed, mean_ratio, verdict))
-    sentences += _remarks(statistics, disagreeing)
+    sentences += _remarks(statistics, agreed.disagreeing)
     return Verdict(
         verdict=verdict,
         confidence=confidence,
@@ -140,8 +124,8 @@ def judge_levels(statistics: LevelStatistics) -> Verdict:
         posterior=weighed.posterior,
         closest=weighed.closest,
         fit=weighed.fit,
-        sequences_agree=scatter_probability(main, weighed.closest),
-        disagreeing=disagreeing,
+        sequences_agree=agreed.probability,
+        disagreeing=agreed.disagreeing,
         expected_class=expected,
         degenerate_levels=sum(one.degenerate_levels for one in statistics.sequences),
         unreliable_levels=sum(one.unreliable_levels for one in statistics.sequences),
@@ -151,59 +135,34 @@ def judge_levels(statistics: LevelStatistics) -> Verdict:
     )
 
 
-def _fits(weighed: Evidence) -> bool:
-    return (
-        weighed.fit >= defaults.LEVEL_FIT_MINIMUM
-        or weighed.contrast <= defaults.LEVEL_DISTANCE_RATIO
-    )
-
-
-def _decide(weighed: Evidence, levels: int, options: LevelOptions) -> tuple[str, float]:
-    confidence = weighed.posterior[weighed.family]
-    decided = (
-        levels >= options.verdict_minimum
-        and _fits(weighed)
-        and confidence >= options.confidence_minimum
-    )
-    return (weighed.family if decided else _UNDECIDED), confidence
-
-
-def _single(one: SequenceStatistics, options: LevelOptions) -> SequenceVerdict:
-    verdict, confidence, mean = _UNDECIDED, 0.0, None
-    if one.refused is None:
-        verdict, confidence = _decide(evidence((one,)), one.levels_used, options)
-        mean = float(np.mean(np.abs(one.ratios)))
-    return SequenceVerdict(
-        label=one.label,
-        expected_class=one.expected_class,
-        verdict=verdict,
-        confidence=confidence,
-        levels_used=one.levels_used,
-        mean_ratio=mean,
-        refused=one.refused,
-    )
-
-
 def _headline(
-    verdict: str, weighed: Evidence, levels: int, expected: str, options: LevelOptions
+    verdict: str,
+    weighed: Evidence,
+    agreed: Agreement,
+    levels: int,
+    expected: str,
+    options: LevelOptions,
 ) -> str:
-    if verdict != _UNDECIDED:
+    if verdict != UNDECIDED:
         text = finding(verdict, weighed.closest, expected)
         return f"{text[0].upper()}{text[1:]} ({levels} reference levels)."
+    if agreed.conflict:
+        tally = ", ".join(f"{name} {count} levels" for name, count in agreed.levels.items())
+        return f"Undecided: the sequences do not follow one ensemble ({tally}); judge them apart."
     order = sorted(weighed.posterior, key=lambda family: -weighed.posterior[family])
     text = reason_undecided(
         levels,
         options.verdict_minimum,
         (order[0], order[1]),
         weighed.posterior[order[0]],
-        _fits(weighed),
+        fits(weighed),
     )
     return f"{text[0].upper()}{text[1:]}."
 
 
 def _other_pool(pool: tuple[SequenceStatistics, ...], options: LevelOptions) -> str:
     levels = sum(one.levels_used for one in pool)
-    verdict, _ = _decide(evidence(pool), levels, options)
+    verdict, _ = decide(evidence(pool), levels, options)
     where = (
         "on a line" if pool[0].geometry == "line" else f"expecting class {pool[0].expected_class}"
     )
@@ -217,7 +176,7 @@ def _misfit(weighed: Evidence, mean_ratio: Interval, verdict: str) -> str:
             "The levels lie even closer together than independent ones, as those of free or nearly "
             "degenerate generators do: no sign of repulsion."
         )
-    if verdict == _UNDECIDED:
+    if verdict == UNDECIDED:
         return f"The fit of {weighed.closest} has probability {weighed.fit:.1e}."
     return (
         f"The levels deviate from {weighed.closest} in detail (probability {weighed.fit:.1e}) but "
@@ -278,7 +237,7 @@ def _nothing(statistics: LevelStatistics, singles: tuple[SequenceVerdict, ...]) 
     if not classes:
         raise UsageError("no level sequence to judge; pass at least one")
     return Verdict(
-        verdict=_UNDECIDED,
+        verdict=UNDECIDED,
         confidence=0.0,
         levels_used=0,
         mean_ratio=None,

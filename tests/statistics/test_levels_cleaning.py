@@ -6,12 +6,12 @@ import numpy as np
 import pytest
 
 from lbwork.errors import UsageError
-from lbwork.levels import LevelOptions, LevelSequence, level_statistics
+from lbwork.levels import LevelOptions, LevelSequence, SequenceStatistics, level_statistics
 from lbwork.levels.cleaning import clean, is_conjugation_closed, merge_degenerate
 from lbwork.levels.ensembles import independent_levels, real_ginibre, sample_levels, self_dual
 
 
-def one(sequence: LevelSequence, options: LevelOptions | None = None):  # type: ignore[no-untyped-def]
+def one(sequence: LevelSequence, options: LevelOptions | None = None) -> SequenceStatistics:
     return level_statistics([sequence], options).sequences[0]
 
 
