@@ -142,12 +142,20 @@ def _apply(
             _add_jumps(i, rho, row, j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr)
 
 
-def apply_tables(tables: ActionTables, rho: np.ndarray, out: np.ndarray | None = None) -> np.ndarray:
+def apply_tables(
+    tables: ActionTables, rho: np.ndarray, out: np.ndarray | None = None
+) -> np.ndarray:
     """``A rho + rho A^dag + sum l rho l^dag``; ``rho`` and the result are complex128 (D, D)."""
     rho = np.ascontiguousarray(rho, dtype=np.complex128)
     if out is None:
         out = np.empty_like(rho)
     _apply(
-        rho, out, *tables.left, tables.weights, *tables.jumps, *tables.entries, tables.entry_pointers
+        rho,
+        out,
+        *tables.left,
+        tables.weights,
+        *tables.jumps,
+        *tables.entries,
+        tables.entry_pointers,
     )
     return out

@@ -82,7 +82,7 @@ class Lindbladian:
     def _checked(self, matrix: np.ndarray) -> np.ndarray:
         if matrix.shape != (self.dimension, self.dimension):
             raise ModelError(
-                f"an array of shape {matrix.shape} is not an operator of this chain; its shape must "
+                f"an array of shape {matrix.shape} is not an operator of this chain; it must "
                 f"be ({self.dimension}, {self.dimension})"
             )
         return matrix
@@ -139,7 +139,9 @@ class Lindbladian:
     @cached_property
     def norm_bound(self) -> float:
         """An upper bound of the operator norm of L: the sum of the norms of its local terms."""
-        return float(sum(np.linalg.norm(term.matrix, 2) for term in superoperator_terms(self.model)))
+        return float(
+            sum(np.linalg.norm(term.matrix, 2) for term in superoperator_terms(self.model))
+        )
 
     def certificate(self) -> GeneratorCertificate:
         """Trace and Hermiticity preservation and positivity, recomputed from the local terms."""

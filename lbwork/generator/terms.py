@@ -61,7 +61,7 @@ def _axes(sites: int) -> list[int]:
 
 
 def vector_to_doubled(vector: np.ndarray, sites: int, dimension: int) -> np.ndarray:
-    """Row-major ``vec(rho)`` (index ket * D + bra) to doubled-chain order; first axis of an array."""
+    """Row-major ``vec(rho)`` (index ket * D + bra) to doubled-chain order; first axis."""
     rest = vector.shape[1:]
     tensor = vector.reshape((dimension,) * (2 * sites) + rest)
     extra = range(2 * sites, 2 * sites + len(rest))

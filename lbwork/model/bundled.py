@@ -66,9 +66,7 @@ def catalogue_entry(name: str) -> CatalogueEntry:
     """The bundled model of this name; raises ModelError with the nearest name."""
     entries = {entry.name: entry for entry in catalogue()}
     if name not in entries:
-        raise ModelError(
-            f"no bundled model '{name}'{nearest(name, entries)}; see lbwork catalogue"
-        )
+        raise ModelError(f"no bundled model '{name}'{nearest(name, entries)}; see lbwork catalogue")
     return entries[name]
 
 

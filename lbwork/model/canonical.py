@@ -49,7 +49,9 @@ def on_site_basis(dimension: int) -> np.ndarray:
         diagonal = np.zeros(dimension)
         diagonal[:level] = 1
         diagonal[level] = -level
-        elements.append(np.diag(diagonal * np.sqrt(dimension / (level * (level + 1)))).astype(complex))
+        elements.append(
+            np.diag(diagonal * np.sqrt(dimension / (level * (level + 1)))).astype(complex)
+        )
     return np.array(elements)
 
 

@@ -72,7 +72,7 @@ FUNCTIONS: Mapping[str, tuple[int, Callable[..., complex]]] = {
     "imag": (1, lambda x: complex(x.imag)),
     "random": (2, _random),
 }
-"""Allowed functions with their number of arguments; ``random(seed, j)`` is reproducible disorder."""
+"""Functions and how many arguments they take; ``random(seed, j)`` is reproducible disorder."""
 
 CONSTANTS: Mapping[str, complex] = {"pi": complex(math.pi)}
 
@@ -119,7 +119,7 @@ def names_in(text: str, place: str) -> set[str]:
 
 
 class _Parser:
-    """Evaluates while it parses; ``values`` are known scalars, ``operators`` makes on-site matrices."""
+    """Evaluates while it parses; ``values`` are scalars, ``operators`` makes on-site matrices."""
 
     def __init__(
         self,
@@ -230,7 +230,9 @@ class _Parser:
             if matrix is not None:
                 return LocalOperator(1, matrix)
         known = [*self.values, *CONSTANTS, *FUNCTIONS, *self.known_operators]
-        kinds = "parameter, function or operator" if self.known_operators else "parameter or function"
+        kinds = (
+            "parameter, function or operator" if self.known_operators else "parameter or function"
+        )
         raise self.fail(f"'{word}' is not a known {kinds}{nearest(word, known)}")
 
     def _called(self, word: str) -> complex:

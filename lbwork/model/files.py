@@ -1,4 +1,4 @@
-"""Model files: TOML with the project's own keys, read strictly and written so that they round-trip."""
+"""Model files: TOML with the project's own keys, read strictly, written to round-trip."""
 
 from __future__ import annotations
 
@@ -52,7 +52,9 @@ def read_toml(path: Path) -> dict[str, Any]:
             raise ModelError(f"{path}: larger than {MAX_FILE_BYTES} bytes; is this a model file?")
         text = path.read_bytes().decode("utf-8")
     except UnicodeDecodeError as error:
-        raise ModelError(f"{path}: byte {error.start} is not UTF-8 text; save it as UTF-8") from None
+        raise ModelError(
+            f"{path}: byte {error.start} is not UTF-8 text; save it as UTF-8"
+        ) from None
     except OSError as error:
         raise ModelError(f"{path}: cannot be read ({error.strerror or error})") from None
     return parse_toml(text, str(path))
@@ -124,7 +126,9 @@ def _operator(item: Mapping[str, Any], place: str) -> Any:
             raise ModelError(f"{place}: matrix must be a list of rows, e.g. [[0, 1], [1, 0]]")
         return value
     if not isinstance(value, Mapping):
-        raise ModelError(f"{place}: random must be a table, e.g. {{kind=\"hermitian\", range=2, seed=1}}")
+        raise ModelError(
+            f'{place}: random must be a table, e.g. {{kind="hermitian", range=2, seed=1}}'
+        )
     _known_keys(value, RANDOM_KEYS, f"{place}: random")
     for key in RANDOM_KEYS:
         if key not in value:

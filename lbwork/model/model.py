@@ -225,7 +225,7 @@ def _listed(value: Number | tuple[Number, ...]) -> Any:
 
 def _check_frame(model: Model) -> None:
     if not isinstance(model.name, str) or not model.name.strip():
-        raise ModelError("name: a model needs a name, e.g. name = \"my-chain\"")
+        raise ModelError('name: a model needs a name, e.g. name = "my-chain"')
     if len(model.name) > 80 or any(ord(character) < 32 for character in model.name):
         raise ModelError("name: at most 80 printable characters are allowed")
     for key, low, high in (("sites", 1, MAX_SITES), ("local_dimension", 2, 10)):
@@ -243,7 +243,10 @@ def _check_frame(model: Model) -> None:
         raise ModelError("boundary: a ring needs at least 2 sites; use open")
     if not model.hamiltonian and not model.jumps:
         raise ModelError("model has neither a hamiltonian nor a jump; add one")
-    for kind, items, wanted in (("hamiltonian", model.hamiltonian, Term), ("jump", model.jumps, Jump)):
+    for kind, items, wanted in (
+        ("hamiltonian", model.hamiltonian, Term),
+        ("jump", model.jumps, Jump),
+    ):
         for item in items:
             if not isinstance(item, wanted):
                 raise ModelError(f"{kind}: {type(item).__name__} is not a {wanted.__name__}")
@@ -302,9 +305,7 @@ def _value_at(
     return scalar(entry, {**names, "j": complex(at[0])}, place)
 
 
-def _rate(
-    jump: Jump, names: Mapping[str, complex], at: tuple[int, int, int], place: str
-) -> float:
+def _rate(jump: Jump, names: Mapping[str, complex], at: tuple[int, int, int], place: str) -> float:
     _check_list_length(jump.rate, at[2], f"{place}: rate")
     value = _value_at(jump.rate, names, at, f"{place}: rate")
     if abs(value.imag) > 1e-14 * abs(value):
@@ -330,7 +331,7 @@ def _first_sites(model: Model, item: Term | Jump, count: int, place: str) -> lis
         wanted = named.get(item.on, count)
         if wanted != count:
             raise ModelError(
-                f"{place}: on = '{item.on}' needs an operator on {wanted} site(s), this one acts on "
+                f"{place}: on = '{item.on}' needs an operator on {wanted} site(s), not on "
                 f"{count}"
             )
         if item.on == "first":

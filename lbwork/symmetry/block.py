@@ -93,7 +93,9 @@ def rows_of_terms(
     if not parts:
         nothing = np.zeros(0, dtype=np.int64)
         return nothing, nothing.astype(np.uint64), nothing.astype(complex)
-    rows_all, columns_all, values_all = (np.concatenate(arrays) for arrays in zip(*parts, strict=True))
+    rows_all, columns_all, values_all = (
+        np.concatenate(arrays) for arrays in zip(*parts, strict=True)
+    )
     return rows_all, columns_all, values_all
 
 
@@ -111,9 +113,7 @@ def assemble_block(
     slabs = []
     for begin in range(0, dimension, step):
         states = orbit_basis.states[begin : begin + step]
-        rows, columns, values = rows_of_terms(
-            terms, states, orbit_basis.sites, orbit_basis.base
-        )
+        rows, columns, values = rows_of_terms(terms, states, orbit_basis.sites, orbit_basis.base)
         index, amplitudes = orbit_basis.locate(columns)
         entries = values * amplitudes / orbit_basis.amplitudes[begin + rows]
         slabs.append(
@@ -227,9 +227,7 @@ def check_block(
         states = numbers_of(operation.apply(digits)[0], orbit_basis.base)
         index, amplitudes = orbit_basis.locate(states)
         result = constant * amplitudes * vector[index]
-        rows, columns, values = rows_of_terms(
-            terms, states, orbit_basis.sites, orbit_basis.base
-        )
+        rows, columns, values = rows_of_terms(terms, states, orbit_basis.sites, orbit_basis.base)
         column_index, column_amplitudes = orbit_basis.locate(columns)
         contribution = values * column_amplitudes * vector[column_index]
         result += np.bincount(rows, contribution.real, states.size)

@@ -97,10 +97,8 @@ def _cycles(site_map: np.ndarray) -> list[list[int]]:
     return cycles
 
 
-def traces_by_label(
-    operation: MonomialMap, charges: Sequence[Charge]
-) -> dict[ChargeLabel, int]:
-    """``sum_x <x|S|x>`` over the basis states of each charge label; labels without any are absent."""
+def traces_by_label(operation: MonomialMap, charges: Sequence[Charge]) -> dict[ChargeLabel, int]:
+    """``sum_x <x|S|x>`` over the basis states of each charge label; empty ones are absent."""
     base = operation.digit_map.shape[1]
     moduli = [charge.modulus for charge in charges]
     totals: dict[ChargeLabel, int] = {(0,) * len(moduli): 1}

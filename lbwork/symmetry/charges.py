@@ -75,7 +75,9 @@ def _transition_rows(terms: CanonicalTerms, base: int, sublattices: int) -> np.n
     return np.array(rows_found, dtype=np.int64).reshape(len(rows_found), width)
 
 
-def _named_candidates(dimension: int, sublattices: int) -> Iterator[tuple[str, str, np.ndarray, int]]:
+def _named_candidates(
+    dimension: int, sublattices: int
+) -> Iterator[tuple[str, str, np.ndarray, int]]:
     """Familiar charges in the order in which they are preferred: (name, kind, values, modulus)."""
     ket, bra = np.divmod(np.arange(dimension**2), dimension)
     uniform = [
@@ -111,7 +113,9 @@ def _is_conserved(rows: np.ndarray, values: np.ndarray, modulus: int) -> bool:
     return not np.any(change % modulus if modulus else change)
 
 
-def find_charges(terms: CanonicalTerms, dimension: int, sites: int, ring: bool) -> tuple[Charge, ...]:
+def find_charges(
+    terms: CanonicalTerms, dimension: int, sites: int, ring: bool
+) -> tuple[Charge, ...]:
     """The finest set of diagonal charges of a generator, familiar ones first.
 
     On a ring with an odd number of sites there are no sublattices, only uniform charges are sought.
@@ -178,7 +182,9 @@ def charge_sectors(
     sectors: dict[ChargeLabel, tuple[int, tuple[int, ...]]] = {(0,) * len(charges): (1, ())}
     moduli = [charge.modulus for charge in charges]
     for site in range(sites):
-        steps = [tuple(int(charge.values[site, digit]) for charge in charges) for digit in range(base)]
+        steps = [
+            tuple(int(charge.values[site, digit]) for charge in charges) for digit in range(base)
+        ]
         grown: dict[ChargeLabel, tuple[int, tuple[int, ...]]] = {}
         for label, (size, state) in sectors.items():
             for digit, step in enumerate(steps):

@@ -148,7 +148,7 @@ def _undo(operation: MonomialMap) -> MonomialMap:
 
 
 def _solve_modulo_two(equations: np.ndarray, width: int) -> np.ndarray | None:
-    """One solution of ``A x = b`` over two elements, free unknowns zero; None when there is none."""
+    """One solution of ``A x = b`` over two elements, free unknowns zero; None if there is none."""
     matrix = equations.reshape(-1, width + 1).copy()
     pivots: list[int] = []
     for column in range(width):

@@ -65,7 +65,9 @@ def _strings(charges: Sequence[Charge], dimension: int) -> list[tuple[str, np.nd
         if any(_implies(charge, signs) for charge in charges):
             kept.append((name, np.diag(signs)))
     pairs = {charge.kind for charge in charges}
-    if {"strong ket", "strong bra"} <= pairs and not any(name == "joint parity" for name, _ in kept):
+    if {"strong ket", "strong bra"} <= pairs and not any(
+        name == "joint parity" for name, _ in kept
+    ):
         kept.insert(0, ("joint parity", np.diag(options["joint parity"])))
     return kept
 
@@ -114,7 +116,9 @@ def unresolved_symmetries(
     weak_rank = _torus_rank(charges, dimension)
     if weak_count > weak_rank:
         count = weak_count - weak_rank
-        name = "SU(2)" if weak_count == 3 else f"non-Abelian weak symmetry of dimension {weak_count}"
+        name = (
+            "SU(2)" if weak_count == 3 else f"non-Abelian weak symmetry of dimension {weak_count}"
+        )
         found.append(
             UnresolvedSymmetry(
                 name, count, "on-site rotations of ket and bra together", _FIELD_ADVICE
@@ -167,8 +171,13 @@ def _torus_rank(charges: Sequence[Charge], dimension: int) -> int:
     if not rows:
         return 0
     # A combination is weak when it equals f(ket) - f(bra); solve for the intersection of spans.
-    table = np.array([values[:2].ravel() - np.repeat(values[:2, :1], values.shape[1], 1).ravel()
-                      for values in rows], dtype=float)
+    table = np.array(
+        [
+            values[:2].ravel() - np.repeat(values[:2, :1], values.shape[1], 1).ravel()
+            for values in rows
+        ],
+        dtype=float,
+    )
     blocks = table.shape[1] // dimension**2
     weak = []
     for block in range(blocks):

@@ -16,7 +16,7 @@ __all__ = ["ket_matrices", "rotate_terms", "rotation_to_diagonal"]
 
 
 def ket_matrices(algebra: GeneratorAlgebra, dimension: int) -> np.ndarray:
-    """Ket parts a of the weak generators ``a kron 1 - 1 kron a^T``: complex (n, sublattices, d, d)."""
+    """Ket parts a of weak generators ``a kron 1 - 1 kron a^T``: complex (n, sublattices, d, d)."""
     shape = algebra.elements.shape[:2]
     tensor = algebra.elements.reshape(*shape, dimension, dimension, dimension, dimension)
     return np.asarray(np.einsum("nsabcb->nsac", tensor) / dimension)
@@ -54,8 +54,7 @@ def rotation_to_diagonal(algebra: GeneratorAlgebra, dimension: int) -> np.ndarra
     off_diagonal = _real_vectors(basis * (1 - np.eye(dimension)))
     diagonal = np.tensordot(_null_combinations(off_diagonal), basis, axes=1)
     commutators = np.concatenate(
-        [_real_vectors(basis @ d - d @ basis) for d in diagonal]
-        or [np.zeros((basis.shape[0], 1))],
+        [_real_vectors(basis @ d - d @ basis) for d in diagonal] or [np.zeros((basis.shape[0], 1))],
         axis=1,
     )
     centraliser = np.tensordot(_null_combinations(commutators), basis, axes=1)
@@ -92,4 +91,3 @@ def rotate_terms(
         image[np.abs(image) < 1e-14 * np.abs(image).max()] = 0
         rotated[support] = image
     return rotated
-

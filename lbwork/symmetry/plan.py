@@ -84,7 +84,7 @@ class SectorBlock:
 
 @dataclass(frozen=True, eq=False)
 class SectorPlan:
-    """Which sectors a model has. ``total_dimension`` is ``d**(2L)``, checked against the sectors."""
+    """Which sectors a model has. ``total_dimension`` is ``d**(2L)``."""
 
     model: Model
     symmetries: SymmetryReport

@@ -97,9 +97,7 @@ class SymmetryReport:
 def _constant(model: Model) -> complex:
     base = model.local_dimension**2
     return complex(
-        sum(
-            np.trace(term.matrix) / base ** len(term.sites) for term in superoperator_terms(model)
-        )
+        sum(np.trace(term.matrix) / base ** len(term.sites) for term in superoperator_terms(model))
     )
 
 

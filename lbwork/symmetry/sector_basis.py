@@ -28,7 +28,9 @@ __all__ = ["build_basis", "digits_of", "numbers_of"]
 
 
 @numba.cfunc(map_sig_64)
-def _apply_monomial(state: Any, sites: Any, sign_pointer: Any, tables: Any) -> Any:  # pragma: no cover
+def _apply_monomial(
+    state: Any, sites: Any, sign_pointer: Any, tables: Any
+) -> Any:  # pragma: no cover
     base = tables[0]
     image = numba.uint64(0)
     for position in range(sites):
@@ -134,7 +136,12 @@ def build_basis(
             "numbers; use fewer sites"
         )
     blocks = {
-        f"map_{index}": (_apply_monomial, generator.order, int(value), _map_tables(generator.operation))
+        f"map_{index}": (
+            _apply_monomial,
+            generator.order,
+            int(value),
+            _map_tables(generator.operation),
+        )
         for index, (generator, value) in enumerate(zip(generators, irrep, strict=True))
     }
     return user_basis(

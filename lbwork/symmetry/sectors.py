@@ -298,7 +298,10 @@ def list_sectors(report: SymmetryReport) -> tuple[Sector, ...]:
                 mirrored += (size - conjugates) * orbit_conjugates
                 sectors.append(
                     _sector(
-                        family, group, representative, dimension,
+                        family,
+                        group,
+                        representative,
+                        dimension,
                         (len(sectors), size * orbit_size, mirrored),
                     )
                 )
