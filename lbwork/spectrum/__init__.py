@@ -1,0 +1,26 @@
+"""Eigenvalues of a generator, sector by sector, each with its certificate."""
+
+from lbwork.spectrum.archive import sector_from_archive, sector_to_archive
+from lbwork.spectrum.cost import SectorCost, cost_estimate
+from lbwork.spectrum.full import full_spectrum, sector_spectrum
+from lbwork.spectrum.records import (
+    GapResult,
+    SectorSpectrum,
+    Spectrum,
+    SpectrumCertificate,
+    SpectrumOptions,
+)
+
+__all__ = [
+    "GapResult",
+    "SectorCost",
+    "SectorSpectrum",
+    "Spectrum",
+    "SpectrumCertificate",
+    "SpectrumOptions",
+    "cost_estimate",
+    "full_spectrum",
+    "sector_from_archive",
+    "sector_spectrum",
+    "sector_to_archive",
+]
