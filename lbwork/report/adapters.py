@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -40,9 +41,10 @@ def figures_of(
 ) -> dict[str, Figure]:
     """All figures of a result, by name.
 
-    record: Spectrum, SectorPlan, GapResult, SteadyState, LevelStatistics, Verdict, an audit, or the
-    document that their ``to_dict()`` gives; complex numbers as numbers or [re, im] pairs. A document
-    that holds others gives the figures of all of them, with the keys in front of the names.
+    record: Spectrum, SectorPlan, GapResult, SteadyState, LevelStatistics, Verdict, an audit, or
+    the document that their ``to_dict()`` gives; complex numbers as numbers or [re, im] pairs. A
+    document that holds others gives the figures of all of them, with the keys in front of the
+    names.
     Names: "spectrum", "sectors", "slow-modes", "gap", "profile", "levels", "means".
     local_dimension: of one site, where the document does not say.
     Raises UsageError when the record holds nothing that can be drawn.
@@ -53,8 +55,9 @@ def figures_of(
         document = {**judge_levels(record).to_dict(), **document}
     figures = _collect(document, look)
     if not figures:
+        fields = ", ".join(map(str, document)) or "no fields"
         raise UsageError(
-            f"nothing to draw in a {type(record).__name__} with {', '.join(document) or 'no fields'}; "
+            f"nothing to draw in a {type(record).__name__} with {fields}; "
             "spectra, steady states, gaps, level statistics and verdicts have figures"
         )
     return figures
@@ -102,7 +105,7 @@ def _spectrum(document: _Document, look: _Look) -> dict[str, Figure]:
     if not parts:
         return {}
     gap = document.get("gap")
-    number = float(gap) if isinstance(gap, int | float) else None
+    number = float(gap) if isinstance(gap, int | float) and math.isfinite(gap) else None
     return {
         "spectrum": spectrum_figure(
             parts, gap=number, title=look.title, unit=look.unit, width=look.width
@@ -120,8 +123,9 @@ def _sectors(document: _Document, look: _Look) -> dict[str, Figure]:
 
 
 def _slow_modes(document: _Document, look: _Look) -> dict[str, Figure]:
-    modes = document.get("slow_modes")
-    if modes is None or len(modes) == 0 or "gap" not in document:
+    modes, gap = document.get("slow_modes"), document.get("gap")
+    # Without a decaying mode there is no finite gap, and nothing slow to look at.
+    if modes is None or len(modes) == 0 or gap is None or not math.isfinite(gap):
         return {}
     if isinstance(modes[0], Mapping):
         modes = [one["eigenvalue"] for one in modes]
@@ -129,7 +133,7 @@ def _slow_modes(document: _Document, look: _Look) -> dict[str, Figure]:
     return {
         "slow-modes": spectrum_figure(
             [("slow modes", levels, 1)],
-            gap=float(document["gap"]),
+            gap=float(gap),
             title=look.title,
             unit=look.unit,
             width=look.width,

@@ -77,7 +77,7 @@ def _pool_figure(
 
 
 def verdict_figures(document: Mapping[str, Any], title: str, width: str) -> dict[str, Figure]:
-    """The two means of a verdict in the plane beside the references; empty without a mean cosine."""
+    """The two means of a verdict beside those of the references; empty without a mean cosine."""
     if "verdict" not in document:
         return {}
     ratio = interval_values(document.get("mean_ratio"))

@@ -45,7 +45,8 @@ def gap_ratio_density(name: str, ratio: npt.NDArray[np.float64]) -> npt.NDArray[
     if name == "1d-poisson":
         return 2.0 / (1.0 + ratio) ** 2
     if name not in _DYSON_INDEX:
-        raise UsageError(f"no gap-ratio density for '{name}'; known are {', '.join(LINE_REFERENCES)}")
+        known = ", ".join(LINE_REFERENCES)
+        raise UsageError(f"no gap-ratio density for '{name}'; known are {known}")
     index = _DYSON_INDEX[name]
     weight = 2.0 * (ratio + ratio**2) ** index / _NORM[index]
     return weight / (1.0 + ratio + ratio**2) ** (1.0 + 1.5 * index)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import textwrap
+from typing import Any
 
 import numpy as np
 import numpy.typing as npt
@@ -64,11 +65,11 @@ def profile_figure(
             top = bottom = figure.subplots()
         else:
             top, bottom = figure.subplots(2, 1, sharex=True, height_ratios=[1.35, 1.0])
-            bonds = np.arange(1, current.size + 1) + 0.5
+            bonds = np.arange(1.0, current.size + 1.0) + 0.5
             _series(bottom, bonds, current, 1)
             bottom.set_ylabel(with_unit(r"\mathrm{spin\ current}", unit))
             letter_panels((top, bottom))
-        _series(top, np.arange(1, sites + 1).astype(np.float64), profile, 0)
+        _series(top, np.arange(1, sites + 1), profile, 0)
         top.set_ylabel(rf"$\langle {symbol}\rangle$")
         ring = current is not None and current.size == sites
         bottom.set_xlim(0.5, sites + (1.0 if ring else 0.5))
@@ -85,7 +86,7 @@ def profile_figure(
 
 
 def _series(
-    axes: Axes, places: npt.NDArray[np.float64], values: npt.NDArray[np.float64], colour: int
+    axes: Axes, places: npt.NDArray[Any], values: npt.NDArray[np.float64], colour: int
 ) -> None:
     axes.axhline(0.0, color=GREY, lw=0.5, zorder=0)
     crowded = values.size > 60

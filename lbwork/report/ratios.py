@@ -25,7 +25,14 @@ from lbwork.report.style import (
 )
 from lbwork.report.wording import interval_text, reference_label
 
-__all__ = ["Density", "IntervalValues", "radial_marginal", "ratio_figure", "reference_curves"]
+__all__ = [
+    "Density",
+    "IntervalValues",
+    "disc_histogram",
+    "radial_marginal",
+    "ratio_figure",
+    "reference_curves",
+]
 
 Density = tuple[npt.NDArray[np.float64], npt.NDArray[np.float64], npt.NDArray[np.float64]]
 """(r_edges (m + 1,), theta_edges (k + 1,) of |theta| in 0..pi, pdf (m, k) per unit area)."""
@@ -33,7 +40,7 @@ Density = tuple[npt.NDArray[np.float64], npt.NDArray[np.float64], npt.NDArray[np
 IntervalValues = tuple[float, float, float]
 """A mean and the ends of its interval: (value, low, high)."""
 
-DASHES: tuple[Any, ...] = ("-", (0, (4, 1.5)), (0, (1, 1.2)), (0, (5, 1.2, 1, 1.2)))
+_DASHES: tuple[Any, ...] = ("-", (0, (4, 1.5)), (0, (1, 1.2)), (0, (5, 1.2, 1, 1.2)))
 _SCATTERED = 400
 _CELL_LEVELS = 35
 _MOST_CELLS = (16, 32)
@@ -64,7 +71,8 @@ def ratio_figure(
     z = finite_array(ratios, "spacing ratios", np.complex128)
     if np.max(np.abs(z)) > 1 + 1e-9:
         raise UsageError(
-            f"a spacing ratio has modulus {np.max(np.abs(z)):.6g}; nearest over next-nearest is <= 1"
+            f"a spacing ratio has modulus {np.max(np.abs(z)):.6g}; nearest over next-nearest level "
+            "is at most 1"
         )
     if reference_name not in references:
         known = ", ".join(references) or "none"
@@ -79,7 +87,7 @@ def ratio_figure(
         shape = (1, 4) if wide else (2, 2)
         data, model, radial, angular = figure.subplots(*shape).ravel().tolist()
         scale = max(float(np.max(density[2])) for density in references.values())
-        mesh = _draw_disc(data, _histogram(z), scale, "data")
+        mesh = _draw_disc(data, disc_histogram(z), scale, "data")
         if z.size < _SCATTERED:
             data.plot(z.real, z.imag, ".", color="white", ms=2.6, mec="black", mew=0.3)
         _draw_disc(model, references[reference_name], scale, reference_label(reference_name))
@@ -89,7 +97,7 @@ def ratio_figure(
         bar = figure.colorbar(
             mesh, cax=model.inset_axes((1.05, 0.0, 0.06, 1.0)), extend="max", label=r"$p(z)$"
         )
-        bar.outline.set_linewidth(0.6)  # type: ignore[operator]
+        bar.outline.set_linewidth(0.6)
         _draw_radial(radial, z, references)
         _draw_angular(angular, z, references)
         letter_panels((data, model, radial, angular))
@@ -120,10 +128,11 @@ def _angular_marginal(density: Density) -> npt.NDArray[np.float64]:
     return (0.5 * np.diff(r_edges**2)) @ pdf
 
 
-def _histogram(z: npt.NDArray[np.complex128]) -> Density:
-    """Density of the data on cells of equal area, over the whole circle.
+def disc_histogram(z: npt.NDArray[np.complex128]) -> Density:
+    """Density of ratios complex128 (n,) on cells of equal area, over the whole circle.
 
-    Equal areas keep the relative noise equal: narrow cells at the centre would flicker.
+    (r_edges, theta_edges in -pi..pi, pdf), integral 1. Equal areas keep the relative noise equal:
+    narrow cells at the centre would flicker.
     """
     cells = max(1.0, z.size / _CELL_LEVELS)
     radial = int(np.clip(round(np.sqrt(cells / 2)), 2, _MOST_CELLS[0]))
@@ -193,7 +202,7 @@ def _bins(count: int) -> int:
 def reference_curves(names: Mapping[str, Any]) -> list[tuple[str, dict[str, Any]]]:
     """Colour and dashes of the curve of each reference, the same in every panel."""
     return [
-        (name, {"color": PALETTE[place % len(PALETTE)], "ls": DASHES[place % len(DASHES)]})
+        (name, {"color": PALETTE[place % len(PALETTE)], "ls": _DASHES[place % len(_DASHES)]})
         for place, name in enumerate(names)
     ]
 

@@ -138,7 +138,11 @@ def sector_figure(
             for place, (_, dimension, copies) in enumerate(ordered):
                 text = f"{dimension}" + (rf" $\times{copies}$" if copies > 1 else "")
                 axes.annotate(
-                    text, (dimension, place), (2, 0), textcoords="offset points", va="center",
+                    text,
+                    (dimension, place),
+                    (2, 0),
+                    textcoords="offset points",
+                    va="center",
                     fontsize=7,
                 )
             axes.tick_params(axis="y", length=0)
@@ -148,7 +152,11 @@ def sector_figure(
             axes.set_xlabel("dimension")
         else:
             axes.stairs(
-                dimensions, np.arange(len(ordered) + 1) + 0.5, baseline=None, color=PALETTE[0], lw=1.0
+                dimensions,
+                np.arange(len(ordered) + 1) + 0.5,
+                baseline=None,
+                color=PALETTE[0],
+                lw=1.0,
             )
             axes.set_yscale("log")
             axes.set_xlim(0.5, len(ordered) + 0.5)

@@ -15,6 +15,8 @@ from matplotlib.figure import Figure
 from matplotlib.patches import Rectangle
 
 from lbwork.errors import UsageError
+from lbwork.report.line_spectra import line_spectrum
+from lbwork.report.spectrum_parts import Parts, draw_gap, mark_gap, padded, sector_name
 from lbwork.report.style import (
     COLOUR_MAP,
     GREY,
@@ -41,10 +43,6 @@ _REAL_TOLERANCE = 1e-10
 _ASPECTS = (0.4, 1.1)
 _SHAPED_POINTS = 600
 _VECTOR_POINTS = 20_000
-_HISTOGRAM_LEVELS = 40
-_RUGS = len(PALETTE)
-
-_Parts = list[tuple[str, npt.NDArray[np.complex128], int]]
 
 
 def spectrum_figure(
@@ -72,44 +70,36 @@ def spectrum_figure(
     everything = np.concatenate([levels for _, levels, _ in parts])
     radius = float(np.max(np.abs(everything)))
     with journal_style():
-        if everything.size > 1 and np.ptp(everything.imag) <= _REAL_TOLERANCE * radius:
-            return _on_the_line(parts, gap, title, unit, column_width(width))
+        if everything.size > 1 and np.max(np.abs(everything.imag)) <= _REAL_TOLERANCE * radius:
+            return line_spectrum(parts, gap, title, unit, column_width(width))
         return _in_the_plane(parts, everything, gap, zoom, title, unit, column_width(width))
 
 
-def _checked(sectors: Sequence[SectorLevels]) -> _Parts:
+def _checked(sectors: Sequence[SectorLevels]) -> Parts:
     if not sectors:
         raise UsageError("no sectors to draw; the list is empty")
     parts = []
     for label, eigenvalues, multiplicity in sectors:
         levels = finite_array(eigenvalues, f"eigenvalues of sector '{label}'", np.complex128)
         if multiplicity < 1:
-            raise UsageError(f"sector '{label}' has multiplicity {multiplicity}; at least 1 is needed")
+            raise UsageError(f"sector '{label}' has multiplicity {multiplicity}; at least 1 counts")
         parts.append((label, levels, int(multiplicity)))
     return parts
-
-
-def _limits(low: float, high: float) -> tuple[float, float]:
-    """Room around the data; a single value gets a scale of its own size."""
-    span = high - low
-    if span <= 1e-12 * max(abs(low), abs(high)):
-        span = 10 * max(abs(low), abs(high), 0.1)
-    return low - 0.05 * span, high + 0.05 * span
 
 
 def _plane_limits(levels: npt.NDArray[np.complex128], gap: float | None) -> Window:
     right = max(0.0, float(np.max(levels.real)))
     left = min(float(np.min(levels.real)), -(gap or 0.0))
-    x_low, x_high = _limits(left, right)
+    x_low, x_high = padded(left, right)
     bottom, top = float(np.min(levels.imag)), float(np.max(levels.imag))
-    y_low, y_high = _limits(min(0.0, bottom), max(0.0, top))
+    y_low, y_high = padded(min(0.0, bottom), max(0.0, top))
+    if gap is not None:
+        # Head room, so that the number of the gap hides no eigenvalue.
+        y_high += 0.08 * (y_high - y_low)
     shallow, steep = _ASPECTS
     lacking = shallow * (x_high - x_low) - (y_high - y_low)
     if lacking > 0:
         y_low, y_high = y_low - lacking / 2, y_high + lacking / 2
-    elif gap is not None:
-        # Head room, so that the number of the gap hides no eigenvalue.
-        y_high += 0.06 * (y_high - y_low)
     lacking = (y_high - y_low) / steep - (x_high - x_low)
     if lacking > 0:
         x_low, x_high = x_low - lacking / 2, x_high + lacking / 2
@@ -117,7 +107,7 @@ def _plane_limits(levels: npt.NDArray[np.complex128], gap: float | None) -> Wind
 
 
 def _in_the_plane(
-    parts: _Parts,
+    parts: Parts,
     everything: npt.NDArray[np.complex128],
     gap: float | None,
     zoom: Window | None,
@@ -146,7 +136,7 @@ def _in_the_plane(
         mappable = _draw_points(axes, parts, _within(everything, window), named)
         _frame(axes, window, gap, unit)
     if gap is not None:
-        _mark_gap(panels[0], gap)
+        mark_gap(panels[0], gap)
     if len(panels) > 1:
         left, right, bottom, top = windows[1]
         panels[0].add_patch(
@@ -183,11 +173,11 @@ def _dimension_bar(figure: Figure, mappable: Any, panels: tuple[Axes, ...]) -> N
         bar.set_ticks([low, high], labels=[f"{low:g}", f"{high:g}"])
     bar.minorticks_off()
     bar.set_label("sector dimension")
-    bar.outline.set_linewidth(0.6)  # type: ignore[operator]
+    bar.outline.set_linewidth(0.6)
 
 
-def _draw_points(axes: Axes, parts: _Parts, count: int, named: bool) -> Any:
-    """Points of all sectors in one panel; returns what a colour bar needs, if there is to be one."""
+def _draw_points(axes: Axes, parts: Parts, count: int, named: bool) -> Any:
+    """Points of all sectors in one panel; returns what a colour bar needs, else None."""
     shaped = sum(levels.size for _, levels, _ in parts) <= _SHAPED_POINTS
     area = float(np.clip(6000.0 / max(count, 1), 1.6, 14.0))
     common: dict[str, Any] = {
@@ -204,7 +194,7 @@ def _draw_points(axes: Axes, parts: _Parts, count: int, named: bool) -> Any:
                 levels.imag,
                 color=PALETTE[place],
                 marker=MARKERS[place] if shaped else "o",
-                label=_name(label, multiplicity),
+                label=sector_name(label, multiplicity),
                 **common,
             )
         return None
@@ -233,89 +223,16 @@ def _frame(axes: Axes, window: Window, gap: float | None, unit: str) -> None:
     axes.axhline(0.0, color=GREY, lw=0.4, zorder=0)
     axes.axvline(0.0, color=GREY, lw=0.4, zorder=0)
     if gap is not None and window[0] < -gap < window[1]:
-        _draw_gap(axes, gap)
+        draw_gap(axes, gap)
     axes.locator_params(nbins=6)
     axes.set_xlabel(with_unit(r"\mathrm{Re}\,\lambda", unit))
     axes.set_ylabel(with_unit(r"\mathrm{Im}\,\lambda", unit))
 
 
-def _draw_gap(axes: Axes, gap: float) -> None:
-    axes.axvline(-gap, color=PALETTE[1], lw=0.7, ls=(0, (4, 2)), zorder=1)
-
-
-def _mark_gap(axes: Axes, gap: float) -> None:
-    left, right = axes.get_xlim()
-    toward_left = (-gap - left) > 0.4 * (right - left)
-    axes.annotate(
-        rf"$\Delta = {gap:.4g}$",
-        xy=(-gap, 1.0),
-        xycoords=("data", "axes fraction"),
-        xytext=(-3 if toward_left else 3, -3),
-        textcoords="offset points",
-        ha="right" if toward_left else "left",
-        va="top",
-        fontsize=7,
-        color=PALETTE[1],
-    )
-
-
-def _name(label: str, multiplicity: int) -> str:
-    return plain(label) + (rf" ($\times{multiplicity}$)" if multiplicity > 1 else "")
-
-
-def _legend_shape(parts: _Parts, width: float) -> tuple[int, int]:
+def _legend_shape(parts: Parts, width: float) -> tuple[int, int]:
     """Columns and rows of the legend: about 17 letters of 7 points per inch."""
     if len(parts) == 1:
         return 1, 0
     longest = max(len(label) + (4 if many > 1 else 0) for label, _, many in parts) + 5
     columns = max(1, min(len(parts), 4, int(width * 17 / longest)))
     return columns, math.ceil(len(parts) / columns)
-
-
-def _on_the_line(
-    parts: _Parts, gap: float | None, title: str, unit: str, width: float
-) -> Figure:
-    rows = parts if len(parts) <= _RUGS else [("all sectors", _joined(parts), 1)]
-    levels = np.concatenate([part[1].real for part in parts])
-    weights = np.concatenate([np.full(part[1].size, float(part[2])) for part in parts])
-    dense = levels.size >= _HISTOGRAM_LEVELS
-    rug_height = 0.16 * (len(rows) + (gap is not None and not dense)) + 0.1
-    figure = figure_of_size(width, rug_height + 0.42 + 1.25 * dense + 0.17 * bool(title))
-    if dense:
-        top, rug = figure.subplots(2, 1, sharex=True, height_ratios=[1.25, rug_height])
-        bins = min(80, max(10, math.ceil(2 * levels.size ** (1 / 3))))
-        top.hist(levels, bins=bins, weights=weights, color=PALETTE[0], alpha=0.35)
-        top.hist(levels, bins=bins, weights=weights, color=PALETTE[0], histtype="step")
-        top.set_ylabel("levels")
-        top.locator_params(axis="y", nbins=5)
-        top.set_ylim(0.0, (1.25 if gap is not None else 1.08) * top.get_ylim()[1])
-    else:
-        rug = figure.subplots()
-        top = rug
-    for place, (_, values, _) in enumerate(rows):
-        rug.eventplot(
-            values.real, lineoffsets=-place, linelengths=0.7, linewidths=0.5, colors=PALETTE[place]
-        )
-    rug.set_yticks(
-        [-float(place) for place in range(len(rows))],
-        [_name(label, multiplicity) for label, _, multiplicity in rows],
-    )
-    rug.tick_params(axis="y", length=0)
-    head = 0.6 if dense or gap is None else 1.6
-    rug.set_ylim(-len(rows) + 0.4, head)
-    low, high = float(np.min(levels)), max(0.0, float(np.max(levels)))
-    rug.set_xlim(*_limits(min(low, -(gap or 0.0)), high))
-    for axes in {top, rug}:
-        axes.axvline(0.0, color=GREY, lw=0.4, zorder=0)
-        if gap is not None:
-            _draw_gap(axes, gap)
-    if gap is not None:
-        _mark_gap(top, gap)
-    if title:
-        top.set_title(plain(title))
-    rug.set_xlabel(with_unit(r"\lambda", unit))
-    return figure
-
-
-def _joined(parts: _Parts) -> npt.NDArray[np.complex128]:
-    return np.concatenate([part[1] for part in parts])

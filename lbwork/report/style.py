@@ -1,7 +1,7 @@
 """How every figure looks: journal widths, fonts, colours, and labels with units.
 
-Figures are built with :class:`matplotlib.figure.Figure` alone, so that nothing leaks into the global
-state of an interactive session; the settings hold only inside :func:`journal_style`.
+Figures are built with :class:`matplotlib.figure.Figure` alone, so that nothing leaks into the
+global state of an interactive session; the settings hold only inside :func:`journal_style`.
 """
 
 from __future__ import annotations
@@ -13,6 +13,7 @@ from typing import Any, Final
 import matplotlib as mpl
 import numpy as np
 import numpy.typing as npt
+from cycler import cycler
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 
@@ -95,7 +96,7 @@ _SETTINGS: Final[dict[str, Any]] = {
     "axes.formatter.useoffset": False,
     "axes.formatter.use_mathtext": True,
     "axes.formatter.limits": (-3, 4),
-    "axes.prop_cycle": mpl.cycler(color=PALETTE),
+    "axes.prop_cycle": cycler(color=PALETTE),
     "legend.frameon": False,
     "legend.handlelength": 1.6,
     "legend.handletextpad": 0.5,
@@ -124,8 +125,11 @@ def journal_style() -> Iterator[None]:
     A user's matplotlibrc does not show through: everything starts from the built-in defaults.
     """
     backend = {"backend", "backend_fallback", "interactive"}
-    ground = {key: value for key, value in mpl.rcParamsDefault.items() if key not in backend}
-    with mpl.rc_context({**ground, **_SETTINGS}):
+    settings: dict[Any, Any] = {
+        key: value for key, value in mpl.rcParamsDefault.items() if key not in backend
+    }
+    settings.update(_SETTINGS)
+    with mpl.rc_context(settings):
         yield
 
 
@@ -175,7 +179,7 @@ def finite_array(values: npt.ArrayLike, name: str, dtype: type = np.float64) -> 
         raise UsageError(f"no {name} to draw; the array is empty")
     if not np.all(np.isfinite(array)):
         place = int(np.flatnonzero(~np.isfinite(array))[0]) + 1
-        raise UsageError(f"{name}: entry {place} is {array[place - 1]}; only finite values are drawn")
+        raise UsageError(f"{name}: entry {place} is {array[place - 1]}; drop what is not finite")
     return array
 
 

@@ -25,7 +25,8 @@ def interval_text(value: float, low: float, high: float) -> str:
     """A value with its interval, to the digits the interval warrants: "0.738 [0.733, 0.744]"."""
     spread = high - low
     digits = 3 if spread <= 0 else min(6, max(1, 1 - math.floor(math.log10(spread))))
-    return f"{value:.{digits}f} [{low:.{digits}f}, {high:.{digits}f}]".replace("-", "\N{MINUS SIGN}")
+    text = f"{value:.{digits}f} [{low:.{digits}f}, {high:.{digits}f}]"
+    return text.replace("-", "\N{MINUS SIGN}")
 
 
 def with_uncertainty(value: float, error: float) -> str:
