@@ -1,5 +1,8 @@
 """Headers, records and completion as HDF5 groups: the one place that knows their fields.
 
+The root attribute ``listing`` repeats in one JSON text what the list of runs shows, since opening
+groups and attributes one by one makes a folder of some hundred runs slow to list.
+
 Each record carries a SHA-256 over its document and arrays, so that a flipped bit is found when the
 record is read; its marker ``complete`` is written last.
 """
@@ -8,6 +11,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Mapping
+from typing import Any
 
 import h5py
 import numpy as np
@@ -16,21 +20,24 @@ from lbwork.errors import StoreError
 from lbwork.store.arrays import read_array, write_array
 from lbwork.store.document import document_text, read_document
 from lbwork.store.records import Record, RunHeader, planned_indices
-from lbwork.store.schema import DOCUMENT, FAMILIES, FORMAT, SCHEMA, checked_text
+from lbwork.store.schema import CLOSING_STATUSES, DOCUMENT, FAMILIES, FORMAT, SCHEMA, checked_text
 
 __all__ = [
+    "check_listing",
     "is_complete",
     "read_header",
+    "read_listing",
     "read_record",
-    "read_text",
     "stamp",
     "write_completion",
     "write_header",
+    "write_listing",
     "write_record",
 ]
 
 _TEXT = h5py.string_dtype("utf-8")
 _MARKER = "complete"
+_GROUPS = frozenset((*FAMILIES, "model", "options", "plan", "provenance"))
 
 
 def stamp(file: h5py.File, header: RunHeader) -> None:
@@ -55,6 +62,7 @@ def write_header(file: h5py.File, header: RunHeader) -> None:
     for family in FAMILIES:
         file.create_group(family)
     file.attrs["header_sha256"] = header.seal()
+    write_listing(file)
 
 
 def read_header(file: h5py.File) -> RunHeader:
@@ -65,13 +73,13 @@ def read_header(file: h5py.File) -> RunHeader:
         kind=_words(file, "kind"),
         created=_words(file, "created"),
         version=_words(file, "lbwork_version"),
-        model_name=read_text(file, "model/name"),
-        model_toml=read_text(file, "model/toml"),
-        canonical_json=read_text(file, "model/canonical_json"),
-        identity=read_text(file, "model/identity"),
-        options_text=read_text(file, "options/json"),
-        plan_text=read_text(file, "plan/json"),
-        provenance_text=read_text(file, "provenance/json"),
+        model_name=_read_text(file, "model/name"),
+        model_toml=_read_text(file, "model/toml"),
+        canonical_json=_read_text(file, "model/canonical_json"),
+        identity=_read_text(file, "model/identity"),
+        options_text=_read_text(file, "options/json"),
+        plan_text=_read_text(file, "plan/json"),
+        provenance_text=_read_text(file, "provenance/json"),
         seed=None if seed is None else int(seed),
     )
     if _words(file, "header_sha256") != header.seal():
@@ -97,7 +105,7 @@ def read_record(file: h5py.File, family: str, name: str) -> Record:
     group = _group(file, f"{family}/{name}")
     if not is_complete(group):
         raise StoreError(f"record {family}/{name} has no completion marker")
-    text = read_text(group, DOCUMENT)
+    text = _read_text(group, DOCUMENT)
     arrays = {key: read_array(item) for key, item in group.items() if key != DOCUMENT}
     if _words(group, "sha256") != _seal(text, arrays):
         raise StoreError(f"record {family}/{name} does not match its SHA-256")
@@ -124,7 +132,33 @@ def write_completion(
     group.attrs["finished"] = finished
     group.attrs["wall_time"] = wall_time
     group.attrs["peak_memory"] = peak_memory
+    write_listing(file)
     group.attrs[_MARKER] = np.uint8(1)
+
+
+def write_listing(file: h5py.File) -> None:
+    """Derive the root attribute ``listing`` of a run file from its content."""
+    file.attrs["listing"] = document_text(_listing(file), "the listing")
+
+
+def read_listing(file: h5py.File) -> dict[str, Any]:
+    """Fields of :class:`RunSummary` from the listing, without looking into the groups."""
+    missing = sorted(_GROUPS - set(file))
+    if missing:
+        raise StoreError(f"it has no group '{missing[0]}'")
+    if "completion" in file and not is_complete(file["completion"]):
+        raise StoreError("its completion has no marker")
+    listing = read_document(_words(file, "listing"), "its listing")
+    if ("completion" in file) != (listing.get("status") in CLOSING_STATUSES):
+        raise StoreError("its listing does not match its content")
+    return dict(listing, results=tuple(listing["results"]))
+
+
+def check_listing(file: h5py.File) -> None:
+    """StoreError when a group is missing or the listing says anything else than the content."""
+    read_listing(file)
+    if _words(file, "listing") != document_text(_listing(file), "the listing"):
+        raise StoreError("its listing does not match its content")
 
 
 def is_complete(group: h5py.Group | None) -> bool:
@@ -132,7 +166,32 @@ def is_complete(group: h5py.Group | None) -> bool:
     return group is not None and int(group.attrs.get(_MARKER, 0)) == 1
 
 
-def read_text(group: h5py.Group, path: str) -> str:
+def _listing(file: h5py.File) -> dict[str, Any]:
+    header = read_header(file)
+    listing: dict[str, Any] = {
+        "kind": header.kind,
+        "created": header.created,
+        "version": header.version,
+        "model_name": header.model_name,
+        "identity": header.identity,
+        "seed": header.seed,
+        "sectors_planned": int(file["plan"].attrs["sectors"]),
+        "sectors_done": len(file["sectors"]),
+        "results": sorted(file["results"]),
+        "status": "unfinished",
+    }
+    if "completion" in file:
+        completion = file["completion"].attrs
+        listing |= {
+            "status": _words(file["completion"], "status"),
+            "finished": _words(file["completion"], "finished"),
+            "wall_time": float(completion["wall_time"]),
+            "peak_memory": int(completion["peak_memory"]),
+        }
+    return listing
+
+
+def _read_text(group: h5py.Group, path: str) -> str:
     """The UTF-8 text in a scalar dataset; StoreError when there is none."""
     dataset = group.get(path)
     if not isinstance(dataset, h5py.Dataset) or dataset.shape != ():

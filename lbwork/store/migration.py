@@ -14,6 +14,7 @@ import h5py
 
 from lbwork.errors import StoreError
 from lbwork.store.arrays import write_array
+from lbwork.store.content import write_listing
 from lbwork.store.schema import FORMAT, SCHEMA
 
 __all__ = ["MIGRATIONS", "Migration", "NewerRunError", "migrate", "schema_of"]
@@ -80,4 +81,7 @@ def migrate(file: h5py.File) -> tuple[str, ...]:
         number += 1
         file.attrs["schema"] = number
         steps.append(step.name)
+    if steps and "model" in file:
+        # Derived from the rest, in today's form; the parts of an unfinished run have none.
+        write_listing(file)
     return tuple(steps)

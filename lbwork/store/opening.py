@@ -5,6 +5,7 @@ from __future__ import annotations
 import contextlib
 from collections.abc import Iterator
 from pathlib import Path
+from typing import Final
 
 import h5py
 
@@ -13,7 +14,10 @@ from lbwork.store.durable import in_memory
 from lbwork.store.migration import NewerRunError, migrate, schema_of
 from lbwork.store.schema import SCHEMA
 
-__all__ = ["DamagedRunError", "damage_named", "opened"]
+__all__ = ["STORED_SCHEMA", "DamagedRunError", "damage_named", "opened"]
+
+STORED_SCHEMA: Final = "stored_schema"
+"""Root attribute, in memory only, of a migrated file: the schema number it has on the disk."""
 
 # What the HDF5 library and NumPy raise on broken content, one way or another.
 _FAILURES = (
@@ -54,7 +58,9 @@ def opened(path: Path) -> Iterator[h5py.File]:
                 yield file
         if not current:
             with in_memory(path.read_bytes()) as file:
+                stored = schema_of(file)
                 migrate(file)
+                file.attrs[STORED_SCHEMA] = stored
                 yield file
 
 

@@ -14,7 +14,7 @@ from typing import Any
 import numpy as np
 
 from lbwork.errors import StoreError
-from lbwork.store.content import is_complete, read_header, read_record
+from lbwork.store.content import check_listing, is_complete, read_header, read_record
 from lbwork.store.document import read_document
 from lbwork.store.opening import opened
 from lbwork.store.places import Places
@@ -36,6 +36,7 @@ class RunFile:
         self._places = places
         self._summary = read_summary(places)
         with opened(places.file) as file:
+            check_listing(file)
             self._header = read_header(file)
 
     def __repr__(self) -> str:

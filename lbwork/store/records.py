@@ -83,7 +83,8 @@ class RunSummary:
     status: "complete", "uncertified" or "failed" for ended runs; "running" while a process writes
     it; "unfinished" when it can be resumed; "newer" when it needs a later lbwork; "damaged".
     reason: why it is damaged or newer, else empty. Fields that could not be read are empty or zero.
-    wall_time in seconds, peak_memory in bytes, created and finished in UTC (ISO 8601).
+    schema is the number on the disk, wall_time in seconds, peak_memory in bytes, created and
+    finished in UTC (ISO 8601).
     """
 
     run_id: str

@@ -15,7 +15,7 @@ from typing import Any
 import lbwork
 from lbwork.errors import StoreError
 from lbwork.provenance import provenance
-from lbwork.store.content import is_complete, read_header, write_header
+from lbwork.store.content import check_listing, read_header, write_header
 from lbwork.store.document import document_text, read_document
 from lbwork.store.durable import file_image, in_memory, make_folder, replace_file
 from lbwork.store.housekeeping import sound_records, sweep
@@ -25,8 +25,8 @@ from lbwork.store.opening import DamagedRunError, damage_named, opened
 from lbwork.store.places import Places
 from lbwork.store.reader import RunFile
 from lbwork.store.records import RunHeader, RunSummary, planned_indices
-from lbwork.store.schema import SUFFIX, checked_kind, checked_text, file_words
-from lbwork.store.summary import all_summaries, run_ids, utc_text
+from lbwork.store.schema import CLOSING_STATUSES, SUFFIX, checked_kind, checked_text, file_words
+from lbwork.store.summary import all_summaries, read_summary, run_ids, utc_text
 from lbwork.store.writer import RunWriter
 
 __all__ = ["RunStore"]
@@ -115,8 +115,8 @@ class RunStore:
         places = Places(self.folder, self.find(run_id))
         lock = RunLock(places.lock, places.run_id)
         try:
-            header, ended = self._header(places)
-            if ended:
+            header = self._header(places)
+            if read_summary(places).status in CLOSING_STATUSES:
                 raise StoreError(f"run '{places.run_id}' has ended; start a new one")
             make_folder(places.parts)
             writer = RunWriter(places, lock, header, sound_records(places))
@@ -145,7 +145,7 @@ class RunStore:
         for summary in reversed(self.list()):
             if (summary.status, summary.kind, summary.identity) == ("unfinished", kind, identity):
                 with contextlib.suppress(DamagedRunError, FileNotFoundError):
-                    header, _ = self._header(Places(self.folder, summary.run_id))
+                    header = self._header(Places(self.folder, summary.run_id))
                     found = (header.identity, header.options_text, header.plan_text, header.seed)
                     if found == task:
                         return summary.run_id
@@ -195,9 +195,10 @@ class RunStore:
             lock.release()
         return steps
 
-    def _header(self, places: Places) -> tuple[RunHeader, bool]:
+    def _header(self, places: Places) -> RunHeader:
         with opened(places.file) as file:
-            return read_header(file), is_complete(file.get("completion"))
+            check_listing(file)
+            return read_header(file)
 
     def _new_place(self, stem: str) -> tuple[Places, RunLock]:
         for count in itertools.count(1):

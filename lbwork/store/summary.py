@@ -9,13 +9,13 @@ from pathlib import Path
 import h5py
 
 from lbwork.errors import StoreError
-from lbwork.store.content import is_complete, read_text
+from lbwork.store.content import read_listing
 from lbwork.store.lock import is_held
 from lbwork.store.migration import NewerRunError
-from lbwork.store.opening import DamagedRunError, opened
+from lbwork.store.opening import STORED_SCHEMA, DamagedRunError, opened
 from lbwork.store.places import Places
 from lbwork.store.records import RunSummary
-from lbwork.store.schema import CLOSING_STATUSES, FAMILIES, SUFFIX
+from lbwork.store.schema import CLOSING_STATUSES, SCHEMA, SUFFIX
 
 __all__ = ["all_summaries", "read_summary", "run_ids", "summary_or_damage", "utc_text"]
 
@@ -78,39 +78,15 @@ def _entries(folder: Path) -> list[str]:
 
 
 def _summary(file: h5py.File, places: Places, parts: dict[str, tuple[str, ...]]) -> RunSummary:
-    for family in FAMILIES:
-        if not isinstance(file.get(family), h5py.Group):
-            raise StoreError(f"it has no group '{family}'")
-    completion = file.get("completion")
-    ended = is_complete(completion)
-    if completion is not None and not ended:
-        raise StoreError("its completion has no marker")
-    names = {family: tuple(file[family]) for family in FAMILIES} if ended else parts
-    seed = file.attrs.get("seed")
-    return RunSummary(
-        run_id=places.run_id,
-        path=places.file,
-        status=_status(str(completion.attrs["status"])) if ended else _open_status(places),
-        kind=str(file.attrs["kind"]),
-        created=str(file.attrs["created"]),
-        finished=str(completion.attrs["finished"]) if ended else "",
-        version=str(file.attrs["lbwork_version"]),
-        schema=int(file.attrs["schema"]),
-        model_name=read_text(file, "model/name"),
-        identity=read_text(file, "model/identity"),
-        seed=None if seed is None else int(seed),
-        sectors_done=len(names["sectors"]),
-        sectors_planned=int(file["plan"].attrs["sectors"]),
-        results=tuple(sorted(names["results"])),
-        wall_time=float(completion.attrs["wall_time"]) if ended else 0.0,
-        peak_memory=int(completion.attrs["peak_memory"]) if ended else 0,
-    )
-
-
-def _status(word: str) -> str:
-    if word not in CLOSING_STATUSES:
-        raise StoreError(f"its status is '{word}', not one of {', '.join(CLOSING_STATUSES)}")
-    return word
+    listing = read_listing(file)
+    if listing["status"] not in CLOSING_STATUSES:
+        listing |= {
+            "status": _open_status(places),
+            "sectors_done": len(parts["sectors"]),
+            "results": parts["results"],
+        }
+    schema = int(file.attrs.get(STORED_SCHEMA, SCHEMA))
+    return RunSummary(run_id=places.run_id, path=places.file, schema=schema, **listing)
 
 
 def _open_status(places: Places) -> str:
