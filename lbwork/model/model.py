@@ -130,7 +130,7 @@ class Model:
                     f"model '{self.name}' has no parameter '{key}'{nearest(key, known)}; "
                     f"it has {', '.join(parameters) or 'none'}"
                 )
-        merged = {
+        merged: dict[str, Any] = {
             "name": self.name,
             "sites": self.sites,
             "local_dimension": self.local_dimension,

@@ -118,10 +118,10 @@ class Term:
     """A Hamiltonian term ``coefficient * operator`` at the places ``on``.
 
     ``operator``: expression, square matrix (array or nested sequence, entries may be expressions)
-    or :class:`RandomOperator`. ``on``: ``all`` places where it fits, ``sites``, ``bonds`` or
-    ``triples`` (the same, checked against the operator's range), ``first``, ``last``, or 1-based numbers of the
-    operator's first site. ``coefficient``: number, expression (may use ``j`` and ``L``) or one
-    value per place.
+    or :class:`RandomOperator`. ``on``: ``all`` places where it fits; ``sites``, ``bonds`` or
+    ``triples`` (the same, checked against the operator's range); ``first``; ``last``; or 1-based
+    numbers of the operator's first site. ``coefficient``: number, expression (may use ``j`` and
+    ``L``) or one value per place.
     """
 
     operator: OperatorSource

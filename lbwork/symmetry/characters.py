@@ -64,7 +64,7 @@ def group_from_generators(
     generators: Sequence[GroupGenerator], sites: int, base: int
 ) -> AbelianGroup:
     """Multiply the generators out; raises SymmetryError when two products coincide."""
-    exponents = [()]
+    exponents: list[tuple[int, ...]] = [()]
     elements = [identity_map(sites, base)]
     for generator in generators:
         grown_exponents, grown = [], []

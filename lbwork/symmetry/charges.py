@@ -67,8 +67,9 @@ def _transition_rows(terms: CanonicalTerms, base: int, sublattices: int) -> np.n
         relation = np.zeros((int(moving.sum()), sublattices, base), dtype=np.int64)
         index = np.arange(relation.shape[0])
         for position, site in enumerate(support):
-            np.add.at(relation, (index, site % sublattices, digits[rows[moving], position]), 1)
-            np.add.at(relation, (index, site % sublattices, digits[columns[moving], position]), -1)
+            # Each row index occurs once per position, so plain indexing adds without collisions.
+            relation[index, site % sublattices, digits[rows[moving], position]] += 1
+            relation[index, site % sublattices, digits[columns[moving], position]] -= 1
         flat = np.ascontiguousarray(relation[:, :, 1:].reshape(-1, width))
         found.update(row.tobytes() for row in np.unique(flat, axis=0))
     rows_found = [np.frombuffer(row, dtype=np.int64) for row in sorted(found)]

@@ -1,0 +1,37 @@
+"""The verbs, in the order of the work. Each module has ``NAME`` and ``run``."""
+
+from types import ModuleType
+
+from lbwork.cli.verbs import (
+    about,
+    audit,
+    catalogue,
+    compare,
+    export,
+    figure,
+    gap,
+    inspect,
+    levels,
+    runs,
+    show,
+    spectrum,
+    steady,
+)
+
+__all__ = ["ALL"]
+
+ALL: tuple[ModuleType, ...] = (
+    catalogue,
+    inspect,
+    spectrum,
+    levels,
+    gap,
+    steady,
+    audit,
+    runs,
+    show,
+    compare,
+    figure,
+    export,
+    about,
+)
