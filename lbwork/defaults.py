@@ -118,3 +118,24 @@ DENSE_BYTES_REAL: Final = 48
 DENSE_BYTES_COMPLEX: Final = 52
 DENSE_BYTES_LINEAR: Final = 60_000
 """Peak bytes of a dense sector: times the square, and times the dimension."""
+
+# gap
+GAP_DENSE_DIMENSION: Final = 1500
+"""Irreducible parts up to this size are diagonalised densely when the gap is sought."""
+
+GAP_ITERATIVE_DIMENSION: Final = 400_000
+"""Largest part that the filtered Krylov search of the slowest levels takes."""
+
+GAP_LEVELS: Final = 6
+"""Slowest levels sought in each large part."""
+
+GAP_RESIDUAL_TOLERANCE: Final = 1e-9
+"""Largest ||L v - lambda v|| / ||L|| of a certified gap."""
+
+GAP_AGREEMENT_TOLERANCE: Final = 1e-7
+"""Two independent starts agree when their gaps differ by less than this share."""
+
+FILTER_DEGREE: Final = 24
+FILTER_STEP: Final = 8.0
+FILTER_TIME: Final = 64.0
+"""Taylor polynomial of exp(t L): degree and time of one step and total time, times 1/||L||."""

@@ -10,7 +10,7 @@ __all__ = ["driven_chain", "kronecker_generator", "open_exclusion", "weakly_driv
 
 
 def embed(matrix: np.ndarray, sites: tuple[int, ...], count: int, dimension: int) -> np.ndarray:
-    """An operator on ``sites`` (any order) as a dense matrix on the chain, by moving tensor axes."""
+    """An operator on ``sites`` (any order) as a dense matrix on the chain."""
     width = len(sites)
     rest = [site for site in range(count) if site not in sites]
     whole = np.kron(matrix, np.eye(dimension ** len(rest))).reshape([dimension] * (2 * count))

@@ -2,7 +2,9 @@
 
 from lbwork.spectrum.archive import sector_from_archive, sector_to_archive
 from lbwork.spectrum.cost import SectorCost, cost_estimate
+from lbwork.spectrum.edge import GapOptions
 from lbwork.spectrum.full import full_spectrum, sector_spectrum
+from lbwork.spectrum.gap import spectral_gap
 from lbwork.spectrum.records import (
     GapResult,
     SectorSpectrum,
@@ -10,9 +12,12 @@ from lbwork.spectrum.records import (
     SpectrumCertificate,
     SpectrumOptions,
 )
+from lbwork.spectrum.scaling import GapScaling, gap_scaling
 
 __all__ = [
+    "GapOptions",
     "GapResult",
+    "GapScaling",
     "SectorCost",
     "SectorSpectrum",
     "Spectrum",
@@ -20,7 +25,9 @@ __all__ = [
     "SpectrumOptions",
     "cost_estimate",
     "full_spectrum",
+    "gap_scaling",
     "sector_from_archive",
     "sector_spectrum",
     "sector_to_archive",
+    "spectral_gap",
 ]

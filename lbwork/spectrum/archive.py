@@ -49,8 +49,8 @@ def sector_from_archive(
     parts = tuple(int(size) for size in arrays["parts"])
     if not eigenvalues.size == bounds.size == sum(parts) == sector.dimension:
         raise StoreError(
-            f"kept sector '{label}' holds {eigenvalues.size} levels, {bounds.size} bounds and parts "
-            f"of {sum(parts)}; the sector has {sector.dimension}"
+            f"kept sector '{label}' holds {eigenvalues.size} levels, {bounds.size} bounds and "
+            f"parts of {sum(parts)}; the sector has {sector.dimension}"
         )
     return SectorSpectrum(
         sector=sector,

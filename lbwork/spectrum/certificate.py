@@ -57,7 +57,11 @@ def level_residual(
 
 
 def sample_levels(
-    parts: Parts, eigenvalues: np.ndarray, samples: int, generator: np.random.Generator, threads: int
+    parts: Parts,
+    eigenvalues: np.ndarray,
+    samples: int,
+    generator: np.random.Generator,
+    threads: int,
 ) -> tuple[float, int]:
     """Largest absolute residual over randomly drawn levels, and how many were drawn.
 
@@ -123,22 +127,22 @@ def certify_sector(
     """Collect the certificate of a sector.
 
     ``levels``: eigenvalues, error bounds and condition numbers, (n,) each; ``sampled``: result of
-    :func:`sample_levels`; ``norm``: norm of the block ``matrix``.
+    :func:`sample_levels`; ``norm``: scale of the block ``matrix``, positive.
     """
     eigenvalues, bounds, conditions = levels
-    # A zero block has zero errors, over any positive scale.
-    frobenius = float(np.linalg.norm(matrix.data)) or 1.0
+    frobenius = max(float(np.linalg.norm(matrix.data)), norm)
     trace = matrix.diagonal().sum()
     square = (matrix.multiply(matrix.T)).sum()
-    scale = norm or 1.0
     return SpectrumCertificate(
         trace_error=float(abs(eigenvalues.sum() - trace) / (np.sqrt(eigenvalues.size) * frobenius)),
         square_error=float(abs((eigenvalues**2).sum() - square) / frobenius**2),
-        residual=sampled[0] / scale,
+        residual=sampled[0] / norm,
         sampled_levels=sampled[1],
         largest_real_part=float(eigenvalues.real.max(initial=-np.inf)),
         largest_condition=float(min(conditions.max(), 1 / np.finfo(float).eps)),
-        unreliable_levels=unreliable_share(eigenvalues, bounds, [int(size) for size in parts.sizes]),
+        unreliable_levels=unreliable_share(
+            eigenvalues, bounds, [int(size) for size in parts.sizes]
+        ),
         threads=threads,
     )
 

@@ -38,9 +38,7 @@ def _levels(matrix: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     real = not np.iscomplexobj(matrix)
     schur = lapack.dgees if real else lapack.zgees
     work = schur(_unsorted, matrix, compute_v=0, lwork=-1)[-2]
-    form, *values = schur(
-        _unsorted, matrix, compute_v=0, lwork=int(work[0].real), overwrite_a=1
-    )
+    form, *values = schur(_unsorted, matrix, compute_v=0, lwork=int(work[0].real), overwrite_a=1)
     info = values[-1]
     if info != 0:
         raise NotCertifiedError(

@@ -17,7 +17,7 @@ from lbwork.spectrum.certificate import (
 )
 from lbwork.spectrum.cost import require_memory
 from lbwork.spectrum.dense import dense_levels
-from lbwork.spectrum.parts import Parts, block_norm, irreducible_parts
+from lbwork.spectrum.parts import Parts, irreducible_parts, rounding_scale
 from lbwork.spectrum.records import (
     SectorSpectrum,
     Spectrum,
@@ -65,9 +65,9 @@ def sector_spectrum(
     options = options or SpectrumOptions()
     matrix = plan.block(sector).matrix
     real = not np.iscomplexobj(matrix.data)
-    parts = irreducible_parts(matrix)
+    norm = rounding_scale(plan, matrix)
+    parts = irreducible_parts(matrix, norm)
     require_memory(int(parts.sizes.max()), real, sector.label)
-    norm = block_norm(matrix)
     eigenvalues, conditions = part_levels(parts, options.threads)
     with np.errstate(over="ignore"):
         bounds = (np.finfo(float).eps * norm + parts.dropped) * conditions

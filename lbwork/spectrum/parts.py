@@ -15,8 +15,9 @@ import scipy.sparse as sparse
 from scipy.sparse.csgraph import connected_components
 
 from lbwork import defaults
+from lbwork.symmetry import SectorPlan
 
-__all__ = ["Parts", "block_norm", "irreducible_parts"]
+__all__ = ["Parts", "block_norm", "irreducible_parts", "rounding_scale"]
 
 
 def block_norm(matrix: sparse.csr_matrix) -> float:
@@ -25,6 +26,16 @@ def block_norm(matrix: sparse.csr_matrix) -> float:
     columns = np.asarray(magnitude.sum(axis=0)).ravel()
     rows = np.asarray(magnitude.sum(axis=1)).ravel()
     return float(np.sqrt(columns.max(initial=0.0) * rows.max(initial=0.0)))
+
+
+def rounding_scale(plan: SectorPlan, matrix: sparse.csr_matrix) -> float:
+    """The size that rounding errors of a sector block are relative to.
+
+    Norm of the block, or the largest local term where the block itself cancels to (nearly) nothing:
+    it was added up from such terms. 1 for a generator that is zero.
+    """
+    local = [float(np.abs(term).max()) for term in plan.symmetries.terms.values()]
+    return max([block_norm(matrix), *local]) or 1.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -70,15 +81,15 @@ class Parts:
         return iter(range(self.sizes.size))
 
 
-def irreducible_parts(matrix: sparse.csr_matrix) -> Parts:
+def irreducible_parts(matrix: sparse.csr_matrix, scale: float) -> Parts:
     """Split a square csr block into its strongly connected parts.
 
-    Entries below :data:`lbwork.defaults.PART_DROP_TOLERANCE` times the norm of the block are
-    rounding left over from the change to the sector basis and count as zero.
+    Entries below :data:`lbwork.defaults.PART_DROP_TOLERANCE` times ``scale`` (see
+    :func:`rounding_scale`) are left over from the change to the sector basis and count as zero.
     """
     entries = matrix.tocoo()
     dimension = matrix.shape[0]
-    kept = np.abs(entries.data) > defaults.PART_DROP_TOLERANCE * block_norm(matrix)
+    kept = np.abs(entries.data) > defaults.PART_DROP_TOLERANCE * scale
     dropped = float(np.linalg.norm(entries.data[~kept]))
     row, column, data = entries.row[kept], entries.col[kept], entries.data[kept]
     pattern = sparse.csr_matrix(

@@ -68,7 +68,7 @@ class SpectrumOptions:
 
 @dataclass(frozen=True)
 class SpectrumCertificate:
-    """Evidence for one sector; every number but the share is relative to the norm of the block.
+    """Evidence for one sector, relative to the norm of its block.
 
     trace_error: ``|sum lambda - tr B| / (sqrt(n) ||B||_F)``. square_error:
     ``|sum lambda^2 - tr B^2| / ||B||_F^2``. residual: largest ``||(B - lambda) v|| / ||B||`` over
@@ -198,8 +198,9 @@ class GapResult:
     are zero, over all sectors with their copies. oscillating_modes: number of eigenvalues on the
     imaginary axis that are not zero; if there are any the gap is 0. residual:
     ``||L v - lambda v|| / ||L||`` for a normalised v, recomputed. slow_modes: complex128, the
-    slowest distinct levels. methods: how each searched sector was treated. ``tolerance`` is the
-    absolute size below which a level counts as zero.
+    slowest distinct levels. methods: how each searched sector was treated. sector_gaps: slowest
+    rate in each searched sector, None where all is zero. tolerance: absolute size below which a level
+    counts as zero.
     """
 
     gap: float
@@ -211,6 +212,7 @@ class GapResult:
     sector: str
     searched: tuple[str, ...]
     methods: tuple[str, ...]
+    sector_gaps: tuple[float | None, ...]
     slow_modes: npt.NDArray[np.complex128]
     tolerance: float
     model: Model
@@ -229,6 +231,7 @@ class GapResult:
             "sector": self.sector,
             "searched": list(self.searched),
             "methods": list(self.methods),
+            "sector_gaps": list(self.sector_gaps),
             "slow_modes": pairs(self.slow_modes),
             "tolerance": self.tolerance,
             "certified": self.certified,

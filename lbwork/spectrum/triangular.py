@@ -87,7 +87,9 @@ def _substitute(
     begin, low, high, row = position
     first = max(row + 1 - begin, 0)
     if first < vectors.shape[1]:
-        rest = known[row - low, first:] - form[row, row + 1 : high] @ vectors[row + 1 : high, first:]
+        rest = (
+            known[row - low, first:] - form[row, row + 1 : high] @ vectors[row + 1 : high, first:]
+        )
         distance = levels[row] - levels[begin + first : begin + vectors.shape[1]]
         distance[np.abs(distance) < smallest] = smallest
         vectors[row, first:] = rest / distance

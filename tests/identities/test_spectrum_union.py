@@ -10,7 +10,14 @@ from lbwork.spectrum import full_spectrum
 from tests.chains import kronecker_generator
 from tests.matching import assert_same_spectrum
 
-SPIN_HALF_BONDS = ("X X + Y Y", "X X + Y Y + 0.7 Z Z", "X X", "X Y - Y X + 0.3 Z Z", "Z Z", "X X + 0.4 Y Z + 0.4 Z Y")
+SPIN_HALF_BONDS = (
+    "X X + Y Y",
+    "X X + Y Y + 0.7 Z Z",
+    "X X",
+    "X Y - Y X + 0.3 Z Z",
+    "Z Z",
+    "X X + 0.4 Y Z + 0.4 Z Y",
+)
 SPIN_HALF_FIELDS = ("", "X", "0.6 Z", "0.3 X + 0.5 Y", "Z")
 SPIN_HALF_JUMPS = ("Z", "S-", "S+", "X", "S- S+", "Z Z", "S+ S-", "0.3 Z + 1j*X", "S- S-")
 SPIN_ONE_BONDS = ("Sx Sx + Sy Sy + Sz Sz", "Sx Sx + Sy Sy", "Sz Sz", "Sx Sy - Sy Sx")
@@ -74,7 +81,10 @@ def spin_one_models(draw):
         sites=2,
         local_dimension=3,
         boundary=draw(st.sampled_from(["open", "periodic"])),
-        hamiltonian=(Term(draw(st.sampled_from(SPIN_ONE_BONDS))), *([Term(field)] if field else [])),
+        hamiltonian=(
+            Term(draw(st.sampled_from(SPIN_ONE_BONDS))),
+            *([Term(field)] if field else []),
+        ),
         jumps=tuple(
             Jump(kind, on=draw(st.sampled_from(["all", "first"])), rate=0.8) for kind in kinds
         ),
