@@ -63,6 +63,12 @@ LEVEL_KRAMERS_WEIGHT: Final = 2.0
 """Prior weight of class AII-dagger, relative to every other family, when all levels are exactly
 twofold: it forces the doublets, the others need two sectors that share one spectrum."""
 
+LEVEL_UNFOLDING_MINIMUM: Final = 300
+"""Shorter sequences (mean over reference levels) are judged by spacing ratios alone."""
+
+LEVEL_EXPECTED_WEIGHT: Final = 4.0
+"""Prior weight of the class that symmetry asks for, where ratios alone decide."""
+
 LEVEL_FIT_MINIMUM: Final = 1e-3
 """Goodness-of-fit probability below which a reference does not describe the levels."""
 

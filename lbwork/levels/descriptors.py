@@ -16,9 +16,19 @@ from lbwork.levels.neighbours import Neighbourhood
 from lbwork.levels.ratios import complex_spacing_ratios, gap_ratios
 from lbwork.levels.spacings import plane_spacings
 
-__all__ = ["LINE_NAMES", "PLANE_NAMES", "line_descriptors", "local_field", "plane_descriptors"]
+__all__ = [
+    "LINE_NAMES",
+    "RATIO_MOMENTS",
+    "PLANE_NAMES",
+    "line_descriptors",
+    "local_field",
+    "plane_descriptors",
+]
 
 PLANE_NAMES = ("r", "cos", "r2", "r cos", "cos2", "s", "s2", "log s", "field")
+RATIO_MOMENTS = 5
+"""How many of the plane's descriptors, from the first, are moments of the spacing ratio."""
+
 LINE_NAMES = ("r", "r2", "double", "double2", "triple", "triple2")
 
 _FIELD_NEIGHBOURS = 12

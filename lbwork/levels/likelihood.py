@@ -9,7 +9,7 @@ S. N. Wood, Nature 466, 1102 (2010); from memory.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -18,6 +18,7 @@ from scipy.special import logsumexp
 from scipy.stats import chi2
 
 from lbwork import defaults
+from lbwork.levels.descriptors import RATIO_MOMENTS
 from lbwork.levels.records import SequenceStatistics
 from lbwork.levels.references import Reference, reference, reference_names, systematic
 
@@ -36,6 +37,7 @@ class Evidence:
     fit: probability of a larger distance than the closest one's.
     contrast: distance of the closest reference over that of the best single ensemble of another
     family; superpositions are left out, since many blocks are as good as independent levels.
+    ratios_only: the spacings and fields fitted no reference and were left out.
     """
 
     log_likelihood: dict[str, float]
@@ -44,6 +46,7 @@ class Evidence:
     closest: str
     fit: float
     contrast: float
+    ratios_only: bool = False
 
     @property
     def family(self) -> str:
@@ -52,13 +55,17 @@ class Evidence:
 
 
 def _score(
-    mean: npt.NDArray[np.float64], count: int, one: Reference, floor: npt.NDArray[np.float64]
+    mean: npt.NDArray[np.float64],
+    count: int,
+    one: Reference,
+    floor: npt.NDArray[np.float64],
+    chosen: slice,
 ) -> tuple[float, float]:
     """Log-likelihood and squared distance of one reference."""
     # The table itself is an average over a finite sample.
-    covariance = one.covariance * (1.0 / count + 1.0 / one.levels) + floor
+    covariance = one.covariance[chosen, chosen] * (1.0 / count + 1.0 / one.levels) + floor
     factor = cho_factor(covariance, lower=True)
-    difference = mean - one.mean
+    difference = mean - one.mean[chosen]
     distance = float(difference @ cho_solve(factor, difference))
     log_determinant = 2.0 * float(np.sum(np.log(np.diag(factor[0]))))
     constant = mean.size * np.log(2.0 * np.pi)
@@ -66,13 +73,50 @@ def _score(
 
 
 def evidence(sequences: tuple[SequenceStatistics, ...]) -> Evidence:
-    """Weigh all references of the geometry the (used, equal-geometry) `sequences` live in."""
+    """Weigh all references of the geometry the (used, equal-geometry) `sequences` live in.
+
+    Spacings and local fields sharpen the distinction, but need an unfolding that short sequences
+    and strongly uneven densities do not allow: what is left of the gradients widens the spacings
+    and imitates weaker repulsion. There, or when no reference explains all descriptors, the
+    scale-free complex spacing ratios decide alone (L. Sa, P. Ribeiro, T. Prosen, Phys. Rev. X 10,
+    021019 (2020)), and the class that the symmetry of the sectors asks for gets the prior weight
+    :data:`lbwork.defaults.LEVEL_EXPECTED_WEIGHT`.
+    """
     geometry = sequences[0].geometry
     descriptors = np.concatenate([one.descriptors for one in sequences])
-    mean, count = np.mean(descriptors, axis=0), len(descriptors)
-    floor = systematic(geometry)
+    full = _weigh(sequences, descriptors, slice(None))
+    counts = np.array([one.levels_used for one in sequences])
+    typical = float(np.average([one.levels for one in sequences], weights=counts))
+    unfolded = typical >= defaults.LEVEL_UNFOLDING_MINIMUM
+    if geometry == "line":
+        return full
+    ratios = _weigh(sequences, descriptors, slice(RATIO_MOMENTS))
+    agreed = _class_preference(full.family, ratios) <= defaults.LEVEL_CLASS_CONFLICT
+    if unfolded and agreed and full.fit >= defaults.LEVEL_FIT_MINIMUM:
+        return full
+    return replace(ratios, ratios_only=True)
+
+
+def _class_preference(family: str, ratios: Evidence) -> float:
+    """By how much the ratios alone prefer another chaotic class to ``family`` (log-likelihood)."""
+    classes = ("A", "AI+", "AII+")
+    if family not in classes:
+        return 0.0
+    best = max(ratios.log_likelihood[name] for name in classes)
+    return best - ratios.log_likelihood[family]
+
+
+def _weigh(
+    sequences: tuple[SequenceStatistics, ...],
+    descriptors: npt.NDArray[np.float64],
+    chosen: slice,
+) -> Evidence:
+    """Weigh the references by some of the descriptors."""
+    geometry = sequences[0].geometry
+    mean, count = np.mean(descriptors, axis=0)[chosen], len(descriptors)
+    floor = systematic(geometry)[chosen, chosen]
     names = reference_names(geometry)
-    scores = {name: _score(mean, count, reference(name), floor) for name in names}
+    scores = {name: _score(mean, count, reference(name), floor, chosen) for name in names}
     log_likelihood = {name: score for name, (score, _) in scores.items()}
     distance = {name: value for name, (_, value) in scores.items()}
 
@@ -85,6 +129,9 @@ def evidence(sequences: tuple[SequenceStatistics, ...]) -> Evidence:
     }
     if "AII+" in weight and all(one.doubled for one in sequences):
         weight["AII+"] += float(np.log(defaults.LEVEL_KRAMERS_WEIGHT))
+    expected = sequences[0].expected_class
+    if chosen.stop is not None and expected in weight:
+        weight[expected] += float(np.log(defaults.LEVEL_EXPECTED_WEIGHT))
     total = logsumexp(list(weight.values()))
     posterior = {family: float(np.exp(value - total)) for family, value in weight.items()}
     best = max(weight, key=lambda family: weight[family])

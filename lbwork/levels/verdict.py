@@ -111,6 +111,11 @@ def judge_levels(statistics: LevelStatistics) -> Verdict:
     mean_ratio = mean_with_interval(tuple(np.abs(one.ratios) for one in main), options.seed)
     sentences = [_headline(verdict, weighed, agreed, levels, expected, options)]
     sentences += [_other_pool(tuple(pool), options) for pool in ranked[1:]]
+    if weighed.ratios_only:
+        sentences.append(
+            "Judged by the spacing ratios alone: the sequences are too short, or their density too "
+            "uneven, to unfold spacings."
+        )
     if weighed.fit < defaults.LEVEL_FIT_MINIMUM and not agreed.conflict:
         sentences.append(_misfit(weighed, mean_ratio, verdict))
     sentences += _remarks(statistics, agreed.disagreeing)
@@ -171,7 +176,8 @@ def _other_pool(pool: tuple[SequenceStatistics, ...], options: LevelOptions) -> 
 
 def _misfit(weighed: Evidence, mean_ratio: Interval, verdict: str) -> str:
     """What to think of a closest reference that does not describe the levels in detail."""
-    if mean_ratio.high < _INDEPENDENT_RATIO.get(weighed.closest, 0.0):
+    kind = "1d-poisson" if weighed.closest.startswith("1d") else "poisson"
+    if mean_ratio.high < _INDEPENDENT_RATIO[kind]:
         return (
             "The levels lie even closer together than independent ones, as those of free or nearly "
             "degenerate generators do: no sign of repulsion."
