@@ -149,6 +149,8 @@ def read_listing(file: h5py.File) -> dict[str, Any]:
     if "completion" in file and not is_complete(file["completion"]):
         raise StoreError("its completion has no marker")
     listing = read_document(_words(file, "listing"), "its listing")
+    if not isinstance(listing, dict):
+        raise StoreError(f"its listing is a {type(listing).__name__}")
     if ("completion" in file) != (listing.get("status") in CLOSING_STATUSES):
         raise StoreError("its listing does not match its content")
     return dict(listing, results=tuple(listing["results"]))

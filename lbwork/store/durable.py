@@ -9,42 +9,30 @@ The price is memory for one file image, which is small beside the matrices that 
 from __future__ import annotations
 
 import contextlib
+import io
 import os
-from collections.abc import Iterator
 from pathlib import Path
 
 import h5py
 
 from lbwork.errors import StoreError
 
-__all__ = ["TEMPORARY", "file_image", "force_folder", "in_memory", "make_folder", "replace_file"]
+__all__ = ["TEMPORARY", "force_folder", "in_memory", "make_folder", "replace_file"]
 
 TEMPORARY = ".tmp"
 """Suffix of files that are not finished; a leftover of a killed process is worthless."""
 
 
-@contextlib.contextmanager
-def in_memory(image: bytes | None = None) -> Iterator[h5py.File]:
-    """A writable HDF5 file that lives in memory, empty or from the bytes of a file.
+def in_memory(content: io.BytesIO) -> h5py.File:
+    """A writable HDF5 file over the bytes of ``content``, a new one when there are none.
 
-    The format of HDF5 1.8 is asked for: every tool in use reads it, and unlike older ones it has
-    checksums on its own book-keeping, so that a damaged file is found before it is believed.
+    The bytes are a whole file again once the returned file is closed; an image taken of an open
+    file has, with HDF5 1.14, a checksum that is not its own. The format of HDF5 1.8 is asked for:
+    every tool in use reads it, and unlike older ones it has checksums on its own book-keeping, so
+    that a damaged file is found before it is believed.
     """
-    versions = ("v108", "v108")
-    file = (
-        h5py.File.in_memory(libver=versions)
-        if image is None
-        else h5py.File.in_memory(image, libver=versions)
-    )
-    with file:
-        yield file
-
-
-def file_image(file: h5py.File) -> bytes:
-    """The bytes this in-memory file would have on the disk."""
-    file.flush()
-    image: bytes = file.id.get_file_image()
-    return image
+    mode = "r+" if content.getbuffer().nbytes else "w"
+    return h5py.File(content, mode, libver=("v108", "v108"))
 
 
 def replace_file(target: Path, image: bytes, workshop: Path) -> None:

@@ -66,6 +66,9 @@ def is_held(path: Path) -> bool:
         fcntl.flock(descriptor, fcntl.LOCK_SH | fcntl.LOCK_NB)
     except BlockingIOError:
         return True
+    except OSError:
+        # A file system without locks: nobody can hold one.
+        return False
     finally:
         os.close(descriptor)
     return False
@@ -79,9 +82,11 @@ def _acquire(path: Path, run_id: str) -> int:
             raise StoreError(
                 f"cannot write '{path}' ({error.strerror}); choose a run folder you may write"
             ) from error
-        if _locked(descriptor) and _still_there(descriptor, path):
-            os.ftruncate(descriptor, 0)
-            os.write(descriptor, f"process {os.getpid()} on {socket.gethostname()}".encode())
+        if _locked(descriptor, path) and _still_there(descriptor, path):
+            # For the message to a second writer only; on a full disk it stays empty.
+            with contextlib.suppress(OSError):
+                os.ftruncate(descriptor, 0)
+                os.write(descriptor, f"process {os.getpid()} on {socket.gethostname()}".encode())
             return descriptor
         os.close(descriptor)
         time.sleep(_PAUSE)
@@ -90,11 +95,17 @@ def _acquire(path: Path, run_id: str) -> int:
     )
 
 
-def _locked(descriptor: int) -> bool:
+def _locked(descriptor: int, path: Path) -> bool:
     try:
         fcntl.flock(descriptor, fcntl.LOCK_EX | fcntl.LOCK_NB)
     except BlockingIOError:
         return False
+    except OSError as error:
+        os.close(descriptor)
+        raise StoreError(
+            f"cannot lock '{path}' ({error.strerror}); choose a run folder on a file system with "
+            "file locks"
+        ) from error
     return True
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import contextlib
+import io
 from collections.abc import Iterator
 from pathlib import Path
 from typing import Final
@@ -57,7 +58,7 @@ def opened(path: Path) -> Iterator[h5py.File]:
             if current:
                 yield file
         if not current:
-            with in_memory(path.read_bytes()) as file:
+            with in_memory(io.BytesIO(path.read_bytes())) as file:
                 stored = schema_of(file)
                 migrate(file)
                 file.attrs[STORED_SCHEMA] = stored

@@ -79,7 +79,7 @@ class RunFile:
 
     @property
     def provenance(self) -> Any:
-        """Versions, machine and thread settings of the first session."""
+        """Versions, machine and thread settings of the program that created the run."""
         return read_document(self._header.provenance_text, "the provenance")
 
     def missing_sectors(self) -> tuple[int, ...]:
@@ -112,13 +112,13 @@ class RunFile:
         """The file of one figure."""
         return self._record("figures", name).arrays["bytes"].tobytes()
 
-    def sessions(self) -> tuple[Record, ...]:
+    def resumptions(self) -> tuple[Record, ...]:
         """One record, with its own provenance, for each time the run was taken up again."""
-        return tuple(self._records("sessions"))
+        return tuple(self._records("resumptions"))
 
     def verify(self) -> int:
         """Read every record against its SHA-256; returns their number, raises on damage."""
-        families = ("sectors", "results", "figures", "sessions")
+        families = ("sectors", "results", "figures", "resumptions")
         return sum(1 for family in families for _ in self._records(family))
 
     def _names(self, family: str) -> tuple[str, ...]:

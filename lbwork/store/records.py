@@ -13,15 +13,17 @@ import numpy as np
 
 from lbwork.errors import StoreError
 from lbwork.store.document import document_text, read_document
+from lbwork.store.schema import sector_name
 
 __all__ = ["Record", "RunHeader", "RunSummary", "planned_indices"]
 
 
 @dataclass(frozen=True)
 class Record:
-    """One sector, result, figure or session: a JSON document and named arrays.
+    """One sector, result, figure or resumption: a JSON document and named arrays.
 
-    elapsed: seconds of work on the run when the record was finished, over all sessions.
+    elapsed: seconds of work on the run when the record was finished, earlier stretches of
+        a resumed run included.
     peak_memory: largest resident size of the writing processes until then, bytes.
     """
 
@@ -120,7 +122,7 @@ def planned_indices(plan: Any) -> tuple[int, ...]:
 
     A plan is a list of sectors or a dict with such a list under "sectors"; a sector that is a dict
     with an integer "index" has this index, any other counts by its place. Raises StoreError when a
-    sector is planned twice.
+    sector is planned twice or its index is out of range.
     """
     sectors = plan.get("sectors", []) if isinstance(plan, dict) else plan
     if not isinstance(sectors, list):
@@ -131,6 +133,8 @@ def planned_indices(plan: Any) -> tuple[int, ...]:
     for place, sector in enumerate(sectors):
         index = sector.get("index") if isinstance(sector, dict) else None
         indices.append(index if isinstance(index, int) else place)
+    for index in indices:
+        sector_name(index)
     index, times = Counter(indices).most_common(1)[0] if indices else (0, 0)
     if times > 1:
         raise StoreError(f"the plan names sector {index} {times} times; name each sector once")

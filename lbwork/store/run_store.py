@@ -5,6 +5,7 @@ from __future__ import annotations
 import contextlib
 import datetime
 import difflib
+import io
 import itertools
 import os
 import re
@@ -12,12 +13,13 @@ from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
-import lbwork
+import numpy as np
+
 from lbwork.errors import StoreError
 from lbwork.provenance import provenance
 from lbwork.store.content import check_listing, read_header, write_header
 from lbwork.store.document import document_text, read_document
-from lbwork.store.durable import file_image, in_memory, make_folder, replace_file
+from lbwork.store.durable import in_memory, make_folder, replace_file
 from lbwork.store.housekeeping import sound_records, sweep
 from lbwork.store.lock import LockedRunError, RunLock
 from lbwork.store.migration import migrate
@@ -28,6 +30,7 @@ from lbwork.store.records import RunHeader, RunSummary, planned_indices
 from lbwork.store.schema import CLOSING_STATUSES, SUFFIX, checked_kind, checked_text, file_words
 from lbwork.store.summary import all_summaries, read_summary, run_ids, utc_text
 from lbwork.store.writer import RunWriter
+from lbwork.version import __version__
 
 __all__ = ["RunStore"]
 
@@ -70,6 +73,7 @@ class RunStore:
         """
         if not _IDENTITY.fullmatch(identity):
             raise StoreError(f"model identity '{identity}' is not 64 hexadecimal digits")
+        whole_seed = _checked_seed(seed)
         make_folder(self.folder)
         sweep(self.folder)
         now = utc_text(datetime.datetime.now(datetime.UTC))
@@ -80,7 +84,7 @@ class RunStore:
         fields = {
             "kind": kind,
             "created": now,
-            "version": lbwork.__version__,
+            "version": __version__,
             "model_name": checked_text(model_name, "the model name"),
             "model_toml": checked_text(model_toml, "the model file"),
             "canonical_json": checked_text(canonical_json, "the canonical model"),
@@ -91,12 +95,12 @@ class RunStore:
         }
         places, lock = self._new_place(stem)
         try:
-            header = RunHeader(run_id=places.run_id, seed=seed, **fields)
+            header = RunHeader(run_id=places.run_id, seed=whole_seed, **fields)
             make_folder(places.parts)
-            with in_memory() as file:
+            content = io.BytesIO()
+            with in_memory(content) as file:
                 write_header(file, header)
-                image = file_image(file)
-            replace_file(places.file, image, places.parts)
+            replace_file(places.file, content.getvalue(), places.parts)
         except BaseException:
             lock.release()
             raise
@@ -120,7 +124,7 @@ class RunStore:
                 raise StoreError(f"run '{places.run_id}' has ended; start a new one")
             make_folder(places.parts)
             writer = RunWriter(places, lock, header, sound_records(places))
-            writer.write_session(provenance())
+            writer.write_resumption(provenance())
         except BaseException:
             lock.release()
             raise
@@ -186,11 +190,12 @@ class RunStore:
         places = Places(self.folder, self.find(run_id))
         lock = RunLock(places.lock, places.run_id)
         try:
-            with damage_named(places.file), in_memory(places.file.read_bytes()) as file:
-                steps = migrate(file)
-                image = file_image(file)
+            with damage_named(places.file):
+                content = io.BytesIO(places.file.read_bytes())
+                with in_memory(content) as file:
+                    steps = migrate(file)
             if steps:
-                replace_file(places.file, image, self.folder)
+                replace_file(places.file, content.getvalue(), self.folder)
         finally:
             lock.release()
         return steps
@@ -212,3 +217,11 @@ class RunStore:
                     return places, lock
                 lock.release()
         raise StoreError(f"no free name for run '{stem}' in '{self.folder}'")
+
+
+def _checked_seed(seed: object) -> int | None:
+    if seed is None:
+        return None
+    if isinstance(seed, bool) or not isinstance(seed, int | np.integer):
+        raise StoreError(f"seed {seed!r} is not a whole number; pass one, or None")
+    return int(seed)

@@ -36,7 +36,7 @@ SUFFIX: Final = ".h5"
 DOCUMENT: Final = "document"
 """Dataset of a record that holds its JSON document."""
 
-FAMILIES: Final = ("sectors", "results", "figures", "sessions")
+FAMILIES: Final = ("sectors", "results", "figures", "resumptions")
 """Groups of records below the root: what is computed sector by sector, named results, pictures,
 and one record for each time the run was taken up again."""
 

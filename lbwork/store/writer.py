@@ -12,6 +12,7 @@ one HDF5 file would not be safe at all.
 from __future__ import annotations
 
 import datetime
+import io
 import time
 from collections.abc import Mapping
 from types import TracebackType
@@ -25,7 +26,7 @@ from lbwork.provenance import peak_memory
 from lbwork.store.arrays import checked_array
 from lbwork.store.content import read_record, stamp, write_completion, write_header, write_record
 from lbwork.store.document import read_document, to_jsonable
-from lbwork.store.durable import file_image, in_memory, replace_file
+from lbwork.store.durable import in_memory, replace_file
 from lbwork.store.housekeeping import remove_parts
 from lbwork.store.lock import RunLock
 from lbwork.store.opening import opened
@@ -157,10 +158,10 @@ class RunWriter:
             "figures", checked_name(name, "figure"), {"bytes": len(content)}, {"bytes": pixels}
         )
 
-    def write_session(self, provenance: Mapping[str, Any]) -> None:
+    def write_resumption(self, provenance: Mapping[str, Any]) -> None:
         """Note that the run was taken up again, and by which versions on which machine."""
-        last = max((int(name) for name in self._names["sessions"]), default=1)
-        self._write("sessions", f"{last + 1:03d}", provenance, {})
+        last = max((int(name) for name in self._names["resumptions"]), default=1)
+        self._write("resumptions", f"{last + 1:03d}", provenance, {})
 
     def finish(self, status: str = "complete") -> RunSummary:
         """Fold everything into the one run file, release the lock and return the summary.
@@ -197,11 +198,11 @@ class RunWriter:
             elapsed=self._elapsed(),
             peak_memory=self._peak(),
         )
-        with in_memory() as file:
+        content = io.BytesIO()
+        with in_memory(content) as file:
             stamp(file, self._header)
             write_record(file, family, record)
-            image = file_image(file)
-        replace_file(self._places.part(family, name), image, self._places.parts)
+        replace_file(self._places.part(family, name), content.getvalue(), self._places.parts)
         self._names[family].add(name)
 
     def _read(self, family: str, name: str) -> Record:
@@ -210,7 +211,8 @@ class RunWriter:
         return read_stored_record(self._places, family, name)
 
     def _folded(self, status: str) -> bytes:
-        with in_memory() as file:
+        content = io.BytesIO()
+        with in_memory(content) as file:
             write_header(file, self._header)
             for family, names in self._names.items():
                 for name in sorted(names):
@@ -223,7 +225,7 @@ class RunWriter:
                 wall_time=self._elapsed(),
                 peak_memory=self._peak(),
             )
-            return file_image(file)
+        return content.getvalue()
 
     def _fold(self, family: str, name: str, file: h5py.File) -> None:
         part = self._places.part(family, name)

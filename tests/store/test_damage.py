@@ -112,6 +112,10 @@ def with_strange_listing(file: h5py.File) -> None:
     file.attrs["listing"] = file.attrs["listing"].replace("complete", "splendid")
 
 
+def with_listing_of_another_form(file: h5py.File) -> None:
+    file.attrs["listing"] = "[1]"
+
+
 LISTED = [
     (truncated, "truncated file"),
     (headed_only, ""),
@@ -127,6 +131,7 @@ LISTED = [
     (edited(with_schema_zero), "schema number 0 does not exist"),
     (edited(with_schema_word), "two"),
     (edited(without_listing), "no attribute 'listing'"),
+    (edited(with_listing_of_another_form), "its listing is a list"),
     (edited(with_strange_listing), "its listing does not match"),
 ]
 

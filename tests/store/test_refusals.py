@@ -24,6 +24,8 @@ from tests.store.examples import sector_arrays, start, write_rest
         ({"options": {"step": float("nan")}}, "options.step is nan"),
         ({"options": {"step": [1.0, np.inf]}}, r"options.step\[1\] is inf"),
         ({"plan": [{"index": 1}, {"index": 1}]}, "names sector 1 2 times"),
+        ({"plan": [{"index": -1}]}, "sector index -1 is not in"),
+        ({"seed": 1.5}, "seed 1.5 is not a whole number"),
         ({"plan": "all"}, "the plan is a str"),
         ({"model_toml": "a\0b"}, "the model file holds a NUL"),
         ({"model_name": "\ud800"}, "the model name is not valid UTF-8 at character 1"),

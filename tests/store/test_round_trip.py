@@ -81,8 +81,8 @@ def test_unfinished_run_is_readable_and_resumes(tmp_path: Path) -> None:
         write_rest(second)
     kept = store.open(run.run_id)
     assert_whole(kept)
-    assert [one.name for one in kept.sessions()] == ["002"]
-    assert kept.sessions()[0].document["versions"]["h5py"] == h5py.__version__
+    assert [one.name for one in kept.resumptions()] == ["002"]
+    assert kept.resumptions()[0].document["versions"]["h5py"] == h5py.__version__
     with pytest.raises(StoreError, match="has ended; start a new one"):
         store.resume(run.run_id)
 

@@ -59,7 +59,7 @@ def test_unfinished_run_of_an_old_schema_is_resumed(tmp_path: Path) -> None:
         header.attrs.update(old.attrs)
         for name in ("model", "options", "plan", "provenance"):
             old.copy(name, header)
-        for name in ("sectors", "results", "figures", "sessions"):
+        for name in ("sectors", "results", "figures", "resumptions"):
             header.create_group(name)
         (tmp_path / "old.parts").mkdir()
         for family, names in (("sectors", old["sectors"]), ("results", old["results"])):
