@@ -66,6 +66,9 @@ twofold: it forces the doublets, the others need two sectors that share one spec
 LEVEL_UNFOLDING_MINIMUM: Final = 300
 """Shorter sequences (mean over reference levels) are judged by spacing ratios alone."""
 
+LEVEL_CLASS_CONFLICT: Final = 2.0
+"""Log-likelihood by which ratios may prefer another class before they decide alone."""
+
 LEVEL_EXPECTED_WEIGHT: Final = 4.0
 """Prior weight of the class that symmetry asks for, where ratios alone decide."""
 
@@ -145,3 +148,31 @@ FILTER_DEGREE: Final = 24
 FILTER_STEP: Final = 8.0
 FILTER_TIME: Final = 64.0
 """Taylor polynomial of exp(t L): degree and time of one step and total time, times 1/||L||."""
+
+# steady
+STEADY_DENSE_DIMENSION: Final = 1500
+"""Sectors up to this size are factorised densely when zero modes are sought."""
+
+STEADY_SPACE_DIMENSION: Final = 40_000_000
+"""Largest number of entries d**(2L) of a density matrix that is built."""
+
+STEADY_DEGENERATE_SPACE: Final = 1_100_000
+"""Largest d**(2L) for which several steady states are told apart."""
+
+STEADY_RESIDUAL_TOLERANCE: Final = 1e-9
+"""Largest ||L rho|| / (||L|| ||rho||) of a certified steady state."""
+
+STEADY_ACCURACY: Final = 1e-6
+"""Largest residual over the separation from the next mode: the error of the state itself."""
+
+STEADY_NEGATIVITY: Final = 1e-8
+"""Smallest eigenvalue of a certified density matrix is above minus this."""
+
+STEADY_POSITIVE: Final = 1e-10
+"""A state with all eigenvalues above this is taken as having full rank."""
+
+STEADY_NEAR_DEGENERATE: Final = 1e-5
+"""Separation over the generator norm below which a steady state is reported as nearly degenerate."""
+
+CONSERVATION_TOLERANCE: Final = 1e-12
+"""A term conserves the magnetisation when it changes it by less than this times its norm."""

@@ -18,8 +18,8 @@ from lbwork.levels.spacings import plane_spacings
 
 __all__ = [
     "LINE_NAMES",
-    "RATIO_MOMENTS",
     "PLANE_NAMES",
+    "RATIO_MOMENTS",
     "line_descriptors",
     "local_field",
     "plane_descriptors",

@@ -77,10 +77,10 @@ def evidence(sequences: tuple[SequenceStatistics, ...]) -> Evidence:
 
     Spacings and local fields sharpen the distinction, but need an unfolding that short sequences
     and strongly uneven densities do not allow: what is left of the gradients widens the spacings
-    and imitates weaker repulsion. There, or when no reference explains all descriptors, the
-    scale-free complex spacing ratios decide alone (L. Sa, P. Ribeiro, T. Prosen, Phys. Rev. X 10,
-    021019 (2020)), and the class that the symmetry of the sectors asks for gets the prior weight
-    :data:`lbwork.defaults.LEVEL_EXPECTED_WEIGHT`.
+    and imitates weaker repulsion. There, or when no reference explains all descriptors, or when
+    the ratios clearly prefer another class, the scale-free complex spacing ratios decide alone
+    (L. Sa, P. Ribeiro, T. Prosen, Phys. Rev. X 10, 021019 (2020)), and the class that the symmetry
+    of the sectors asks for gets the prior weight :data:`lbwork.defaults.LEVEL_EXPECTED_WEIGHT`.
     """
     geometry = sequences[0].geometry
     descriptors = np.concatenate([one.descriptors for one in sequences])
