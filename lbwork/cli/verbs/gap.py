@@ -15,7 +15,7 @@ from lbwork.cli.options import (
     chosen_model,
     several_sizes,
 )
-from lbwork.spectrum import fit_gap_scaling, spectral_gap
+from lbwork.spectrum import gap_scaling, spectral_gap
 from lbwork.store import RunStore
 from lbwork.study import keep_result
 
@@ -50,9 +50,10 @@ def run(
         for done, one in enumerate(models):
             tell(done, f"{one.sites} sites")
             results.append(spectral_gap(one))
-    scaling = fit_gap_scaling(sizes, [result.gap for result in results])
+    scaling = gap_scaling(sizes, [result.gap for result in results])
     document = {
         **scaling.to_dict(),
+        "sizes": list(sizes),
         "results": [
             {"sites": size, **result.to_dict()} for size, result in zip(sizes, results, strict=True)
         ],
