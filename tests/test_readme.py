@@ -31,7 +31,7 @@ def test_the_model_file_is_legal(model_folder):
     assert (model.sites, model.parameters["delta"]) == (6, 0.5)
 
 
-def test_the_session_prints_what_it_says(model_folder):
+def test_the_example_prints_what_it_says(model_folder):
     shown = io.StringIO()
     with contextlib.redirect_stdout(shown):
         exec(blocks("python")[0], {})
