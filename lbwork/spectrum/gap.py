@@ -99,9 +99,9 @@ def spectral_gap(
     Dense where a part has at most ``options.dense_dimension`` states, otherwise a Krylov search in
     the exponential of the generator from independent starts. Levels on the imaginary axis count as
     oscillating modes and make the gap 0; ``sector_gaps`` lists the slowest rate of each sector.
-    ``progress(done, total, sector)`` is called before each sector. Raises CapacityError when a sector is too large, NotCertifiedError when starts disagree
-    or the residual, recomputed with the generator itself, is above
-    :data:`lbwork.defaults.GAP_RESIDUAL_TOLERANCE`.
+    ``progress(done, total, sector)`` is called before each sector. Raises CapacityError when a
+    sector is too large, NotCertifiedError when starts disagree or the residual, recomputed with the
+    generator itself, is above :data:`lbwork.defaults.GAP_RESIDUAL_TOLERANCE`.
     """
     options = options or GapOptions()
     plan = plan_sectors(model) if isinstance(model, Model) else model

@@ -199,8 +199,8 @@ class GapResult:
     imaginary axis that are not zero; if there are any the gap is 0. residual:
     ``||L v - lambda v|| / ||L||`` for a normalised v, recomputed. slow_modes: complex128, the
     slowest distinct levels. methods: how each searched sector was treated. sector_gaps: slowest
-    rate in each searched sector, None where all is zero. tolerance: absolute size below which a level
-    counts as zero.
+    rate in each searched sector, None where all is zero. tolerance: absolute size below which a
+    level counts as zero.
     """
 
     gap: float

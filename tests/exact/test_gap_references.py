@@ -71,7 +71,7 @@ def test_oscillating_coherence_is_found_far_from_zero():
 
 
 def test_closed_chain_has_no_gap():
-    """Every level is imaginary; zero modes are pairs of equal energies, by exact diagonalisation."""
+    """Every level is imaginary; zero modes are pairs of equal energies (plain NumPy)."""
     result = spectral_gap(driven_chain(3, delta=0.3, drive=0.0, bias=0.0))
     flip = np.array([[0, 1], [1, 0]])
     turn = np.array([[0, -1j], [1j, 0]])

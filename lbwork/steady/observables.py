@@ -1,0 +1,66 @@
+"""Local expectation values of a density matrix by partial traces."""
+
+from __future__ import annotations
+
+import numpy as np
+
+__all__ = [
+    "local_magnetisation",
+    "magnetisation_profile",
+    "reduced_density",
+    "spectrum_quantities",
+    "zz_correlations",
+]
+
+
+def local_magnetisation(dimension: int) -> np.ndarray:
+    """Diagonal of ``2 S^z`` (sigma^z for d = 2), highest state first, float64 (d,)."""
+    return np.arange(dimension - 1, -dimension, -2, dtype=float)
+
+
+def reduced_density(
+    density: np.ndarray, sites: tuple[int, ...], count: int, dimension: int
+) -> np.ndarray:
+    """Partial trace of (D, D) onto ``sites`` (0-based, any order), complex (d^k, d^k)."""
+    tensor = density.reshape((dimension,) * (2 * count))
+    ket = list(range(count))
+    bra = [count + site if site in sites else site for site in range(count)]
+    kept = [*sites, *(count + site for site in sites)]
+    reduced = np.einsum(tensor, [*ket, *bra], kept, optimize=False)
+    return np.asarray(reduced.reshape((dimension ** len(sites),) * 2))
+
+
+def _populations(density: np.ndarray, count: int, dimension: int) -> np.ndarray:
+    return np.asarray(np.diagonal(density).real.reshape((dimension,) * count))
+
+
+def magnetisation_profile(density: np.ndarray, count: int, dimension: int) -> np.ndarray:
+    """``<sigma^z_j>`` (``<2 S^z_j>`` for d > 2), float64 (L,)."""
+    populations = _populations(density, count, dimension)
+    values = local_magnetisation(dimension)
+    return np.array(
+        [
+            populations.sum(axis=tuple(other for other in range(count) if other != site)) @ values
+            for site in range(count)
+        ]
+    )
+
+
+def zz_correlations(density: np.ndarray, count: int, dimension: int) -> np.ndarray:
+    """``<m_i m_j> - <m_i><m_j>`` of the magnetisation, float64 (L, L); variances on the diagonal."""
+    populations = _populations(density, count, dimension).ravel()
+    values = local_magnetisation(dimension)
+    states = np.arange(populations.size)
+    columns = np.empty((populations.size, count))
+    for site in range(count):
+        columns[:, site] = values[states // dimension ** (count - 1 - site) % dimension]
+    means = populations @ columns
+    return np.asarray(columns.T @ (populations[:, None] * columns) - np.outer(means, means))
+
+
+def spectrum_quantities(density: np.ndarray) -> tuple[float, float, float]:
+    """Smallest eigenvalue, purity ``tr rho^2`` and von Neumann entropy (natural logarithm)."""
+    weights = np.linalg.eigvalsh(density)
+    positive = weights[weights > 0]
+    entropy = -float(np.sum(positive * np.log(positive)))
+    return float(weights[0]), float(np.sum(weights**2)), max(entropy, 0.0)
