@@ -1,11 +1,12 @@
-"""Matrix-free application of a generator to a density matrix, threads over blocks of rows.
+"""Matrix-free application of a generator to a density matrix, threads over tiles.
 
 ``L(rho) = A rho + rho A^dag + sum_k l_k rho l_k^dag`` with sparse ``A`` and ``l_k`` of dimension
 ``D = d**L`` (rates absorbed). Everything diagonal is one factor per element,
 ``W_ij = A_ii + A_jj* + sum_k l_k(i) l_k(j)*``, kept as one D x D array (real where possible). The
-left product adds scaled rows; the right product works on a transposed tile of a few rows, so that
-both run along contiguous memory. Besides input and output only W, tiles and D x D-sparse operators
-are held, never a matrix of dimension ``D**2``.
+left product works on tiles of a few columns, the right product on transposed tiles of a few rows;
+tiles hold real and imaginary parts apart, so that one scalar multiplies a whole vector register.
+Besides input and output only W, tiles and D x D-sparse operators are held, never a matrix of
+dimension ``D**2``.
 """
 
 from __future__ import annotations
@@ -26,13 +27,15 @@ TILE = 8
 class ActionTables:
     """Flat arrays that the compiled kernel reads.
 
-    ``left``: csr arrays of A without its diagonal; ``weights``: W, float64 or complex128 (D, D);
+    ``left``: csr arrays of A without its diagonal, real and imaginary parts of the values apart;
+    ``imaginary``: whether all real parts are zero (real H); ``weights``: W, float64 or complex128 (D, D);
     ``jumps``: csr arrays of the off-diagonal jumps, stacked; ``entries``: the same jumps as (row,
     column, conjugated value) lists with ``entry_pointers`` (K + 1,).
     """
 
     dimension: int
-    left: tuple[np.ndarray, np.ndarray, np.ndarray]
+    left: tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]
+    imaginary: bool
     weights: np.ndarray
     jumps: tuple[np.ndarray, np.ndarray, np.ndarray]
     entries: tuple[np.ndarray, np.ndarray, np.ndarray]
@@ -85,21 +88,36 @@ def action_tables(a: sparse.csr_matrix, jumps: list[sparse.csr_matrix]) -> Actio
     )
     pointers = np.cumsum([0, *(item.nnz for item in lists)]).astype(np.int64)
     weights = _weights(diagonal, factors)
+    pointer, column, value = _csr_arrays(left)
     return ActionTables(
-        dimension, _csr_arrays(left), weights, _csr_arrays(stacked), joined, pointers
+        dimension,
+        (pointer, column, value.real.copy(), value.imag.copy()),
+        bool(np.all(value.real == 0)),
+        weights,
+        _csr_arrays(stacked),
+        joined,
+        pointers,
     )
 
 
 @numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
-def _right_product(tile_in, tile_out, a_ptr, a_col, a_val):  # pragma: no cover
-    for j in range(tile_in.shape[0]):
+def _times_tile(pointer, column, real, imag, sign, imaginary, source, target):  # pragma: no cover
+    """``target = M source`` for tiles (2, D, TILE); ``sign`` -1 conjugates the matrix."""
+    for j in range(source.shape[1]):
         for b in range(TILE):
-            tile_out[j, b] = 0
-        for position in range(a_ptr[j], a_ptr[j + 1]):
-            value = a_val[position].conjugate()
-            column = a_col[position]
+            target[0, j, b] = 0.0
+            target[1, j, b] = 0.0
+        for position in range(pointer[j], pointer[j + 1]):
+            other = column[position]
+            y = sign * imag[position]
             for b in range(TILE):
-                tile_out[j, b] += value * tile_in[column, b]
+                target[0, j, b] -= y * source[1, other, b]
+                target[1, j, b] += y * source[0, other, b]
+            if not imaginary:
+                x = real[position]
+                for b in range(TILE):
+                    target[0, j, b] += x * source[0, other, b]
+                    target[1, j, b] += x * source[1, other, b]
 
 
 @numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
@@ -114,32 +132,59 @@ def _add_jumps(i, rho, row, j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr):  #
 
 
 @numba.njit(parallel=True, cache=True, fastmath={"nsz", "contract", "reassoc"})
-def _apply(
-    rho, out, a_ptr, a_col, a_val, weights, j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr
+def _left(rho, out, pointer, column, real, imag, imaginary):  # pragma: no cover
+    dimension = rho.shape[0]
+    for block in numba.prange((dimension + TILE - 1) // TILE):
+        first = block * TILE
+        width = min(TILE, dimension - first)
+        source = np.zeros((2, dimension, TILE))
+        target = np.empty((2, dimension, TILE))
+        for i in range(dimension):
+            for b in range(width):
+                source[0, i, b] = rho[i, first + b].real
+                source[1, i, b] = rho[i, first + b].imag
+        _times_tile(pointer, column, real, imag, 1.0, imaginary, source, target)
+        for i in range(dimension):
+            for b in range(width):
+                out[i, first + b] = complex(target[0, i, b], target[1, i, b])
+
+
+@numba.njit(parallel=True, cache=True, fastmath={"nsz", "contract", "reassoc"})
+def _right(
+    rho,
+    out,
+    pointer,
+    column,
+    real,
+    imag,
+    imaginary,
+    weights,
+    j_ptr,
+    j_col,
+    j_val,
+    e_row,
+    e_col,
+    e_val,
+    e_ptr,
 ):  # pragma: no cover
     dimension = rho.shape[0]
-    blocks = (dimension + TILE - 1) // TILE
-    for block in numba.prange(blocks):
+    for block in numba.prange((dimension + TILE - 1) // TILE):
         first = block * TILE
-        rows = min(TILE, dimension - first)
-        tile_in = np.zeros((dimension, TILE), dtype=np.complex128)
-        tile_out = np.empty((dimension, TILE), dtype=np.complex128)
-        for b in range(rows):
-            for j in range(dimension):
-                tile_in[j, b] = rho[first + b, j]
-        _right_product(tile_in, tile_out, a_ptr, a_col, a_val)
-        for b in range(rows):
+        height = min(TILE, dimension - first)
+        source = np.zeros((2, dimension, TILE))
+        target = np.empty((2, dimension, TILE))
+        for j in range(dimension):
+            for b in range(height):
+                source[0, j, b] = rho[first + b, j].real
+                source[1, j, b] = rho[first + b, j].imag
+        _times_tile(pointer, column, real, imag, -1.0, imaginary, source, target)
+        for j in range(dimension):
+            for b in range(height):
+                i = first + b
+                out[i, j] += weights[i, j] * rho[i, j] + complex(target[0, j, b], target[1, j, b])
+        for b in range(height):
             i = first + b
-            row = out[i]
-            source = rho[i]
-            for j in range(dimension):
-                row[j] = weights[i, j] * source[j] + tile_out[j, b]
-            for position in range(a_ptr[i], a_ptr[i + 1]):
-                value = a_val[position]
-                other = rho[a_col[position]]
-                for j in range(dimension):
-                    row[j] += value * other[j]
-            _add_jumps(i, rho, row, j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr)
+            _add_jumps(i, rho, out[i], j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr)
 
 
 def apply_tables(
@@ -149,10 +194,12 @@ def apply_tables(
     rho = np.ascontiguousarray(rho, dtype=np.complex128)
     if out is None:
         out = np.empty_like(rho)
-    _apply(
+    _left(rho, out, *tables.left, tables.imaginary)
+    _right(
         rho,
         out,
         *tables.left,
+        tables.imaginary,
         tables.weights,
         *tables.jumps,
         *tables.entries,
