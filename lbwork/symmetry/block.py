@@ -99,6 +99,11 @@ def rows_of_terms(
     return rows_all, columns_all, values_all
 
 
+def entry_scale(terms: CanonicalTerms) -> float:
+    """Largest modulus of an entry of the local terms, 1 for the zero generator."""
+    return max((float(np.abs(matrix).max()) for matrix in terms.values()), default=1.0)
+
+
 def _entries_per_row(terms: CanonicalTerms) -> int:
     """Largest possible number of non-zeros that all terms together put into one row."""
     return 1 + sum(int((matrix != 0).sum(axis=1).max()) for matrix in terms.values())
@@ -123,8 +128,7 @@ def assemble_block(
         )
     block = sparse.vstack(slabs, format="csr")
     block = block + constant * sparse.identity(dimension, dtype=complex, format="csr")
-    largest = float(np.abs(block.data).max(initial=0.0))
-    block.data[np.abs(block.data) < 1e-15 * largest] = 0
+    block.data[np.abs(block.data) < 1e-15 * entry_scale(terms)] = 0
     block.eliminate_zeros()
     block.sort_indices()
     return block
@@ -143,13 +147,14 @@ def antilinear_action(
 
 
 def real_form(
-    block: sparse.csr_matrix, operation: MonomialMap, orbit_basis: OrbitBasis
+    block: sparse.csr_matrix, operation: MonomialMap, orbit_basis: OrbitBasis, scale: float
 ) -> tuple[sparse.csr_matrix, sparse.csr_matrix]:
     """Real matrix ``U^dag B U`` and the unitary U whose columns an antilinear symmetry fixes.
 
     Needs ``A B = B A`` with ``A**2 = 1``: columns are ``(e_r + A e_r)/sqrt 2``,
-    ``i (e_r - A e_r)/sqrt 2`` for pairs and ``sqrt(phase) e_r`` for single states. Raises
-    SymmetryError when the result is not real.
+    ``i (e_r - A e_r)/sqrt 2`` for pairs and ``sqrt(phase) e_r`` for single states. ``scale`` is the
+    size of the generator's entries, against which imaginary parts are judged: a block may vanish.
+    Raises SymmetryError when the result is not real.
     """
     image, phase = antilinear_action(operation, orbit_basis)
     dimension = orbit_basis.dimension
@@ -171,7 +176,6 @@ def real_form(
     )
     unitary = sparse.csr_matrix((values, (rows, columns)), shape=(dimension, dimension))
     rotated = (unitary.conj().T @ block @ unitary).tocsr()
-    scale = max(float(np.abs(rotated.data).max(initial=0.0)), 1e-300)
     imaginary = float(np.abs(rotated.data.imag).max(initial=0.0))
     if imaginary > 1e-11 * scale:
         raise SymmetryError(
@@ -218,8 +222,7 @@ def check_block(
     vector = generator.normal(size=dimension) + 1j * generator.normal(size=dimension)
     product = block @ vector
     # The generator's own size counts: on a steady sector the product vanishes.
-    entry = max((float(np.abs(matrix).max()) for matrix in terms.values()), default=1.0)
-    scale = max(float(np.abs(product).max(initial=0.0)), entry)
+    scale = max(float(np.abs(product).max(initial=0.0)), entry_scale(terms))
     chosen = generator.choice(dimension, size=min(dimension, 24), replace=False)
     digits = digits_of(orbit_basis.states[chosen], orbit_basis.sites, orbit_basis.base)
     worst = 0.0

@@ -16,6 +16,7 @@ from lbwork.symmetry.block import (
     OrbitBasis,
     assemble_block,
     check_block,
+    entry_scale,
     real_form,
     sector_isometry,
 )
@@ -136,7 +137,8 @@ class SectorPlan:
             )
         unitary = None
         if sector.reality is not None:
-            matrix, unitary = real_form(matrix, sector.reality, orbits)
+            scale = entry_scale(report.terms)
+            matrix, unitary = real_form(matrix, sector.reality, orbits, scale)
         return SectorBlock(sector, matrix, mismatch, orbits, unitary, group, report.rotation)
 
     def to_dict(self) -> dict[str, Any]:
