@@ -46,7 +46,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
         say(f"lbwork: {_one_line(str(error))}")
         return error.exit_code
     except _WrongUsage as error:
-        say(f"lbwork: {_one_line(error.format_message())}{_help_hint(error)}")
+        say(f"lbwork: {_one_line(_words(error))}{_help_hint(error)}")
         return 2
     except (typer.Abort, KeyboardInterrupt):
         say("lbwork: interrupted; finished sectors are kept")
@@ -54,6 +54,11 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except BrokenPipeError:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
+
+
+def _words(error: Exception) -> str:
+    formatted = getattr(error, "format_message", None)
+    return str(formatted()) if callable(formatted) else str(error)
 
 
 def _help_hint(error: Exception) -> str:

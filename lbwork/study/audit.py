@@ -71,6 +71,10 @@ class Audit:
             lines.append(f"Not certified: {part}: {reason}")
         return "\n".join(lines)
 
+    def levels_document(self) -> dict[str, Any]:
+        """Verdict and statistics in one document, with the ratios that the figures need."""
+        return {**self.verdict.to_dict(), **self.statistics.to_dict()}
+
     def to_dict(self) -> dict[str, Any]:
         """A JSON document of all parts; the spectrum by size only (it is kept in the run)."""
         return {
@@ -142,13 +146,14 @@ def audit(
             progress=lambda done, _, sector: tell(done, sector.label),
         )
         result = _finish(model, plan, spectrum, tell, writer.run_id)
-        parts = {"generator": result.generator, "levels": result.verdict}
-        parts |= {"gap": result.gap, "steady": result.steady}
-        for name, part in parts.items():
-            if part is not None:
-                writer.write_result(name, part.to_dict(), {})
-        writer.write_result("statistics", result.statistics.to_dict(), {})
-        writer.write_result("audit", result.to_dict(), {})
+        writer.write_result("generator", result.generator.to_dict(), {})
+        writer.write_result("levels", result.levels_document(), {})
+        if result.gap is not None:
+            writer.write_result("gap", result.gap.to_dict(), {})
+        if result.steady is not None:
+            writer.write_result("steady", result.steady.to_dict(), {})
+        summary = {"conclusion": result.conclusion(), "refused": dict(result.refused)}
+        writer.write_result("audit", {**summary, "certified": result.certified}, {})
         writer.finish("complete" if result.certified else "uncertified")
     return result
 

@@ -18,7 +18,22 @@ from lbwork.cli.verbs import (
     steady,
 )
 
-__all__ = ["ALL"]
+__all__ = [
+    "ALL",
+    "about",
+    "audit",
+    "catalogue",
+    "compare",
+    "export",
+    "figure",
+    "gap",
+    "inspect",
+    "levels",
+    "runs",
+    "show",
+    "spectrum",
+    "steady",
+]
 
 ALL: tuple[ModuleType, ...] = (
     catalogue,

@@ -79,6 +79,7 @@ def run(
     verdict = judge_levels(statistics)
     document = {
         **verdict.to_dict(),
+        **statistics.to_dict(),
         "unresolved": [item.to_dict() for item in spectrum.plan.symmetries.unresolved],
     }
     arrays = {"ratios": statistics.ratios, "gap_ratios": statistics.gap_ratios}
