@@ -176,3 +176,6 @@ STEADY_NEAR_DEGENERATE: Final = 1e-5
 
 CONSERVATION_TOLERANCE: Final = 1e-12
 """A term conserves the magnetisation when it changes it by less than this times its norm."""
+
+FILTER_SMALLEST_DIMENSION: Final = 60
+"""Blocks up to this size are not worth a Krylov search."""

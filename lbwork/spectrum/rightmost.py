@@ -30,7 +30,7 @@ class SlowLevels:
     vectors: np.ndarray
     residuals: np.ndarray
 
-    def select(self, chosen: np.ndarray) -> SlowLevels:
+    def select(self, chosen: np.ndarray | slice) -> SlowLevels:
         """The levels at the given positions or where a mask is true."""
         return SlowLevels(self.levels[chosen], self.vectors[:, chosen], self.residuals[chosen])
 
@@ -58,8 +58,11 @@ def rightmost_levels(
 
     ``stretch`` (close to 1) changes the time of the exponential, so that two calls do not share
     accidental coincidences of ``exp(t lambda)``. A multiple level may be found once only: combine
-    starts to count it. Raises NotCertifiedError when the search does not converge.
+    starts to count it. Small blocks are solved densely. Raises NotCertifiedError when the search
+    does not converge.
     """
+    if matrix.shape[0] <= defaults.FILTER_SMALLEST_DIMENSION:
+        return _project(matrix, np.eye(matrix.shape[0])).select(slice(count))
     norm = block_norm(matrix)
     start = np.random.default_rng(seed).normal(size=matrix.shape[0])
     steps = round(defaults.FILTER_TIME / defaults.FILTER_STEP)
@@ -89,7 +92,7 @@ def _project(matrix: sparse.csr_matrix, vectors: np.ndarray) -> SlowLevels:
 
     For a real block the span is made real, so that conjugate pairs come out exactly.
     """
-    if not np.iscomplexobj(matrix.data):
+    if not np.iscomplexobj(matrix.data) and np.iscomplexobj(vectors):
         vectors = np.hstack([vectors.real, vectors.imag])
     left, strengths, _ = np.linalg.svd(vectors, full_matrices=False)
     basis = left[:, strengths > 1e-8 * strengths[0]]

@@ -65,7 +65,8 @@ def mixed_limit(plan: SectorPlan, found: ZeroModes) -> tuple[np.ndarray, list[np
 def _projectors(limit: np.ndarray, conserved: list[np.ndarray]) -> list[np.ndarray]:
     """Isometries (D, r) onto the orthogonal supports of the steady states."""
     weights, vectors = np.linalg.eigh(limit)
-    support = vectors[:, weights > defaults.STEADY_POSITIVE * weights[-1]]
+    kept = weights > defaults.STEADY_POSITIVE * weights[-1]
+    support, weights = vectors[:, kept], weights[kept]
     generator = np.random.default_rng(7)
     generic = np.zeros((support.shape[1],) * 2, dtype=complex)
     for quantity in conserved:
@@ -73,6 +74,9 @@ def _projectors(limit: np.ndarray, conserved: list[np.ndarray]) -> list[np.ndarr
         generic += generator.normal() * _hermitian(inner) + generator.normal() * _hermitian(
             1j * inner
         )
+    # Dropping what does not commute with the limit averages over the flow limit**(i t), which maps
+    # the algebra onto itself: the states then add up to the limit.
+    generic[np.abs(weights[:, None] - weights) > 1e-9 * weights[-1]] = 0
     values, columns = np.linalg.eigh(generic)
     steps = np.flatnonzero(np.diff(values) > 1e-7 * max(float(np.abs(values).max()), 1e-300))
     return [support @ part for part in np.split(columns, steps + 1, axis=1)]

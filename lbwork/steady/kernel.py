@@ -33,7 +33,7 @@ class SectorKernel:
 
     Left vectors are only needed to tell several steady states apart, so they are computed on call.
     ``separation``: size of the smallest mode that is not zero, a singular value (``factorised``) or
-    a decay rate (``filtered``); infinity where there is no other mode.
+    an eigenvalue (``filtered``); infinity where there is no other mode.
     """
 
     right: np.ndarray
@@ -116,14 +116,14 @@ def _factorised_kernel(matrix: sparse.csr_matrix, solve: Solver, tolerance: floa
 def _filtered_side(
     matrix: sparse.csr_matrix, tolerance: float, starts: int
 ) -> tuple[np.ndarray, float]:
-    """Orthonormal null vectors joined over independent starts, and the slowest other rate."""
+    """Orthonormal null vectors joined over independent starts, and the smallest other level."""
     kernel = np.zeros((matrix.shape[0], 0))
-    rate, number = np.inf, 0
+    size, number = np.inf, 0
     while True:
         found = rightmost_levels(matrix, defaults.GAP_LEVELS, 40 + number, 1 + 0.07 * number)
         zero = np.abs(found.levels) <= tolerance
         if np.any(~zero):
-            rate = min(rate, -float(found.levels[~zero].real.max()))
+            size = min(size, float(np.abs(found.levels[~zero]).min()))
         kernel = np.hstack([kernel, found.vectors[:, zero]])
         number += 1
         if kernel.shape[1]:
@@ -131,7 +131,7 @@ def _filtered_side(
             kernel = left[:, strengths > 1e-6]
         # One start may find one vector of a larger kernel; a start that adds none ends the search.
         if number >= starts and kernel.shape[1] < number:
-            return kernel, rate
+            return kernel, size
 
 
 def sector_kernel(
@@ -153,12 +153,12 @@ def sector_kernel(
         )
     with threadpool_limits(limits=defaults.DENSE_THREADS):
         if filtered and irreducible:
-            right, rate = _filtered_side(matrix, tolerance, 2)
+            right, separation = _filtered_side(matrix, tolerance, 2)
 
             def left() -> np.ndarray:
                 return _filtered_side(matrix.conj().T.tocsr(), tolerance, 2)[0]
 
-            return SectorKernel(right, left, rate, "filtered")
+            return SectorKernel(right, left, separation, "filtered")
         if size <= defaults.STEADY_DENSE_DIMENSION:
             return _factorised_kernel(matrix, _dense_solver(matrix, scale), tolerance)
         return _factorised_kernel(matrix, _sparse_solver(matrix, scale), tolerance)

@@ -47,7 +47,7 @@ def magnetisation_profile(density: np.ndarray, count: int, dimension: int) -> np
 
 
 def zz_correlations(density: np.ndarray, count: int, dimension: int) -> np.ndarray:
-    """``<m_i m_j> - <m_i><m_j>`` of the magnetisation, float64 (L, L); variances on the diagonal."""
+    """``<m_i m_j> - <m_i><m_j>`` of the magnetisation, float64 (L, L); diagonal: variances."""
     populations = _populations(density, count, dimension).ravel()
     values = local_magnetisation(dimension)
     states = np.arange(populations.size)

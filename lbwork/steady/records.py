@@ -148,4 +148,5 @@ class SteadyState:
             f"<tr><td>{html.escape(name)}</td><td>{html.escape(value)}</td></tr>"
             for name, value in self._rows()
         )
-        return f"<table><caption>{html.escape(f'steady state of {self.model}')}</caption>{body}</table>"
+        title = html.escape(f"steady state of {self.model}")
+        return f"<table><caption>{title}</caption>{body}</table>"

@@ -36,7 +36,7 @@ class ZeroModes:
     """Zero modes found in the searched sectors.
 
     count: with the copies of each sector. separation: smallest size of any other mode that was met
-    (singular value or decay rate). ``with_modes``: sectors that have zero modes. ``excluded``:
+    (singular value or eigenvalue). ``with_modes``: sectors that have zero modes. ``excluded``:
     labels of sectors that were not searched since they cannot have one.
     """
 
@@ -83,7 +83,8 @@ def zero_modes(
 
     ``filtered`` forces the Krylov search or the factorisation, None chooses by size.
     ``full_rank(found)`` tells whether a unique neutral steady state has full rank; without it every
-    sector is searched. Raises NotCertifiedError when no zero mode is found: every generator has one.
+    sector is searched. Raises NotCertifiedError when no zero mode is found; every generator has
+    one.
     """
     tolerance = zero_tolerance(plan.model)
     first = [sector for sector in plan.sectors if _unshifting(plan, sector)]
@@ -119,7 +120,8 @@ def zero_modes(
     count = sum(item.kernel.count * item.sector.multiplicity for item in found)
     if count == 0:
         raise NotCertifiedError(
-            f"no zero mode of {plan.model.name} below {tolerance:.1e}; the generator is badly scaled"
+            f"no zero mode of {plan.model.name} below {tolerance:.1e}; scale the model to "
+            "couplings of order 1"
         )
     return ZeroModes(
         count=count,
