@@ -20,7 +20,6 @@ _WrongUsage: type[Exception] = typer.BadParameter.__mro__[1]
 application = typer.Typer(
     name="lbwork",
     help="Numerics of Lindblad generators on chains; every number with its certificate.",
-    no_args_is_help=True,
     add_completion=False,
     pretty_exceptions_enable=False,
     rich_markup_mode=None,
@@ -35,12 +34,9 @@ def main(arguments: Sequence[str] | None = None) -> int:
     0 done and certified, 1 refused or not certified, 2 wrong usage. Bugs keep their traceback.
     """
     command = typer.main.get_command(application)
+    words = list(sys.argv[1:] if arguments is None else arguments)
     try:
-        status = command.main(
-            args=list(sys.argv[1:] if arguments is None else arguments),
-            prog_name="lbwork",
-            standalone_mode=False,
-        )
+        status = command.main(args=words or ["--help"], prog_name="lbwork", standalone_mode=False)
         return status if isinstance(status, int) else 0
     except LbworkError as error:
         say(f"lbwork: {_one_line(str(error))}")
@@ -68,4 +64,4 @@ def _help_hint(error: Exception) -> str:
 
 
 def _one_line(text: str) -> str:
-    return " ".join(text.split())
+    return " ".join(text.split()).rstrip(".")

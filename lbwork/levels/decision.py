@@ -90,10 +90,10 @@ def single(one: SequenceStatistics, options: LevelOptions) -> SequenceVerdict:
 
 
 def agreement(
-    pool: tuple[SequenceStatistics, ...], closest: str, options: LevelOptions
+    pool: tuple[SequenceStatistics, ...], weighed: Evidence, options: LevelOptions
 ) -> Agreement:
-    """Hold the sequences of a pool against each other; `closest` is the reference of the pool."""
-    probability = scatter_probability(pool, closest)
+    """Hold the sequences of a pool against each other; `weighed` is the evidence of the pool."""
+    probability = scatter_probability(pool, weighed.closest, weighed.ratios_only)
     sure = [verdict for verdict in (single(one, options) for one in pool) if verdict.sure]
     levels: dict[str, int] = {}
     for verdict in sure:

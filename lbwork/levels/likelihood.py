@@ -147,17 +147,20 @@ def _weigh(
     )
 
 
-def scatter_probability(sequences: tuple[SequenceStatistics, ...], closest: str) -> float:
+def scatter_probability(
+    sequences: tuple[SequenceStatistics, ...], closest: str, ratios_only: bool = False
+) -> float:
     """Probability of the scatter between sequences if all follow one ensemble; 1 for one sequence.
 
     chi^2 = sum_i N_i (x_i - x)^T C^-1 (x_i - x) with p (k - 1) degrees of freedom, C that of the
-    reference `closest`.
+    reference `closest`; `ratios_only` leaves out what needs unfolding, as the evidence did.
     """
     if len(sequences) < 2:
         return 1.0
     counts = np.array([one.levels_used for one in sequences])
-    means = np.array([np.mean(one.descriptors, axis=0) for one in sequences])
+    chosen = slice(RATIO_MOMENTS) if ratios_only else slice(None)
+    means = np.array([np.mean(one.descriptors, axis=0)[chosen] for one in sequences])
     centred = means - np.average(means, axis=0, weights=counts)
-    whitened = np.linalg.solve(reference(closest).covariance, centred.T)
+    whitened = np.linalg.solve(reference(closest).covariance[chosen, chosen], centred.T)
     value = float(np.sum(counts * np.einsum("ip,pi->i", centred, whitened)))
     return float(chi2.sf(value, means.shape[1] * (len(sequences) - 1)))

@@ -104,7 +104,7 @@ def judge_levels(statistics: LevelStatistics) -> Verdict:
     weighed = evidence(main)
     levels = sum(one.levels_used for one in main)
     verdict, confidence = decide(weighed, levels, options)
-    agreed = agreement(main, weighed.closest, options)
+    agreed = agreement(main, weighed, options)
     if agreed.conflict:
         verdict = UNDECIDED
     expected = main[0].expected_class

@@ -162,7 +162,7 @@ def _profile(document: _Document, look: _Look) -> dict[str, Figure]:
     if "magnetisation" not in document:
         return {}
     current = document.get("spin_current")
-    reason = document.get("spin_current_reason") or "no conserved spin current"
+    reason = document.get("current_reason") or "no conserved spin current"
     values = None if current is None else real_values(current, "spin currents")
     if values is not None and values.size == 0:
         # A single site has no bond.

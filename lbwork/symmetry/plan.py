@@ -23,7 +23,12 @@ from lbwork.symmetry.block import (
 from lbwork.symmetry.characters import AbelianGroup, group_from_generators
 from lbwork.symmetry.local_basis import doubled_rotation
 from lbwork.symmetry.report import SymmetryReport, find_symmetries
-from lbwork.symmetry.sector_basis import build_basis, digits_of, numbers_of
+from lbwork.symmetry.sector_basis import (
+    build_basis,
+    digits_of,
+    numbers_of,
+    require_numberable,
+)
 from lbwork.symmetry.sectors import Sector, list_sectors
 
 __all__ = ["SectorBlock", "SectorPlan", "plan_sectors"]
@@ -162,7 +167,9 @@ class SectorPlan:
 def plan_sectors(model: Model) -> SectorPlan:
     """Find the symmetries of a model and list its sectors.
 
-    The dimensions times multiplicities add up to ``d**(2L)``; SymmetryError otherwise.
+    The dimensions times multiplicities add up to ``d**(2L)``; SymmetryError otherwise. Raises
+    CapacityError when basis states cannot be numbered with 64 bits.
     """
+    require_numberable(model.sites, model.local_dimension**2)
     report = find_symmetries(model)
     return SectorPlan(model, report, list_sectors(report))

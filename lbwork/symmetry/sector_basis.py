@@ -24,7 +24,7 @@ from lbwork.symmetry.characters import GroupGenerator
 from lbwork.symmetry.charges import Charge, ChargeLabel
 from lbwork.symmetry.monomials import MonomialMap
 
-__all__ = ["build_basis", "digits_of", "numbers_of"]
+__all__ = ["build_basis", "digits_of", "numbers_of", "require_numberable"]
 
 
 @numba.cfunc(map_sig_64)
@@ -71,6 +71,15 @@ def _number_operator(
 ) -> Any:  # pragma: no cover
     numba.carray(result, 1)[0].matrix_ele *= 1.0
     return 0
+
+
+def require_numberable(sites: int, base: int) -> None:
+    """Raise CapacityError when basis states do not fit into 64-bit integers."""
+    if sites * np.log2(base) >= 62:
+        raise CapacityError(
+            f"{sites} sites have more operators than 64-bit numbers can count; sectors need at "
+            f"most {int(61 / np.log2(base))} sites of this local dimension"
+        )
 
 
 def digits_of(states: np.ndarray, sites: int, base: int) -> np.ndarray:
@@ -127,14 +136,8 @@ def build_basis(
     """QuSpin basis of one sector.
 
     ``irrep`` holds one integer per generator: the eigenvalue is ``exp(2 pi i irrep / order)``.
-    ``expected`` is the dimension known from characters, used to size the arrays. Raises
-    CapacityError when basis states do not fit into 64-bit integers.
+    ``expected`` is the dimension known from characters, used to size the arrays.
     """
-    if sites * np.log2(base) >= 63:
-        raise CapacityError(
-            f"{sites} sites of local dimension {base} in the doubled chain exceed 64-bit state "
-            "numbers; use fewer sites"
-        )
     blocks = {
         f"map_{index}": (
             _apply_monomial,

@@ -59,7 +59,7 @@ def test_gap_steady_state_and_scaling() -> None:
     steady = figures_of({"magnetisation": [0.1, -0.1], "spin_current": [0.3], "purity": 0.5})
     assert list(steady) == ["profile"]
     silent = figures_of(
-        {"magnetisation": [0.1], "spin_current": None, "spin_current_reason": "loss"}
+        {"magnetisation": [0.1], "spin_current": None, "current_reason": "loss"}
     )
     assert "loss" in silent["profile"].axes[0].get_xlabel()
     scaling = figures_of(

@@ -3,9 +3,12 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Annotated
+
+import typer
 
 from lbwork.cli.console import emit_json, emit_table, emit_text
-from lbwork.cli.options import JsonFlag, RunName, RunsFolder
+from lbwork.cli.options import JsonFlag, RunsFolder
 from lbwork.store import RunStore
 from lbwork.study import compare_runs
 
@@ -16,8 +19,12 @@ def _shown(value: object) -> str:
     return f"{value:.12g}" if isinstance(value, float) else str(value)
 
 
+First = Annotated[str, typer.Argument(help="Run id, or the beginning of it.", metavar="FIRST")]
+Second = Annotated[str, typer.Argument(help="Run to compare with.", metavar="SECOND")]
+
+
 def run(
-    first: RunName, second: RunName, json: JsonFlag = False, runs: RunsFolder = Path("runs")
+    first: First, second: Second, json: JsonFlag = False, runs: RunsFolder = Path("runs")
 ) -> None:
     """Same model, same numbers? Quantities side by side, spectra compared as sets."""
     store = RunStore(runs)
