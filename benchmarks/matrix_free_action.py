@@ -54,9 +54,11 @@ def main() -> None:
             raise SystemExit(f"{name}: the two disagree by {difference:.1e}")
         tables = generator._forward
         held = tables.weights.nbytes + sum(
-            array.nbytes for group in (tables.left, tables.jumps, tables.entries) for array in group
+            array.nbytes
+            for group in (tables.real, tables.imaginary, tables.jumps, tables.entries)
+            for array in group
         )
-        tiles = 2 * 8 * size * 16 * numba.get_num_threads()
+        tiles = 3 * 4 * size * 16 * numba.get_num_threads()
         extra = (held + tiles + out.nbytes) / rho.nbytes
         print(
             f"{name:<28} {1e3 * product:9.1f} {1e3 * action:12.1f} {product / action:6.1f} "

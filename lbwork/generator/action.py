@@ -1,12 +1,15 @@
-"""Matrix-free application of a generator to a density matrix, threads over tiles.
+"""Matrix-free application of a generator to a density matrix, threads over blocks of rows.
 
 ``L(rho) = A rho + rho A^dag + sum_k l_k rho l_k^dag`` with sparse ``A`` and ``l_k`` of dimension
 ``D = d**L`` (rates absorbed). Everything diagonal is one factor per element,
-``W_ij = A_ii + A_jj* + sum_k l_k(i) l_k(j)*``, kept as one D x D array (real where possible). The
-left product works on tiles of a few columns, the right product on transposed tiles of a few rows;
-tiles hold real and imaginary parts apart, so that one scalar multiplies a whole vector register.
-Besides input and output only W, tiles and D x D-sparse operators are held, never a matrix of
-dimension ``D**2``.
+``W_ij = A_ii + A_jj* + sum_k l_k(i) l_k(j)*``, kept as one D x D array (real where possible). With
+the off-diagonal part of A written as ``x + i y`` the two products are
+
+    ``A rho + rho A^dag = (x rho + rho x^T) + i (y rho - rho y^T)``,
+
+so that every inner loop multiplies a run of doubles by one real number: rows of rho on the left, a
+transposed tile of a few rows on the right. Besides input and output only W, row buffers and
+D x D-sparse operators are held, never a matrix of dimension ``D**2``.
 """
 
 from __future__ import annotations
@@ -20,33 +23,40 @@ import scipy.sparse as sparse
 __all__ = ["ActionTables", "action_tables", "apply_tables"]
 
 
-TILE = 8
+TILE = 4
 
 
 @dataclass(frozen=True, eq=False)
 class ActionTables:
     """Flat arrays that the compiled kernel reads.
 
-    ``left``: csr arrays of A without its diagonal, real and imaginary parts of the values apart;
-    ``imaginary``: whether all real parts are zero (real H); ``weights``: W, float64 or complex128 (D, D);
-    ``jumps``: csr arrays of the off-diagonal jumps, stacked; ``entries``: the same jumps as (row,
-    column, conjugated value) lists with ``entry_pointers`` (K + 1,).
+    ``real`` and ``imaginary``: csr arrays (pointers, columns, values) of x and y; ``weights``: W,
+    float64 or complex128 (D, D); ``jumps``: csr arrays of the off-diagonal jumps, stacked;
+    ``entries``: the same jumps as (row, column, conjugated value) lists with ``entry_pointers``
+    (K + 1,).
     """
 
     dimension: int
-    left: tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]
-    imaginary: bool
+    real: tuple[np.ndarray, np.ndarray, np.ndarray]
+    imaginary: tuple[np.ndarray, np.ndarray, np.ndarray]
     weights: np.ndarray
     jumps: tuple[np.ndarray, np.ndarray, np.ndarray]
     entries: tuple[np.ndarray, np.ndarray, np.ndarray]
     entry_pointers: np.ndarray
 
 
+def _real_if_possible(values: np.ndarray) -> np.ndarray:
+    """Float64 when no imaginary part is there: the kernel is compiled for both."""
+    kept = values.real if np.iscomplexobj(values) and not np.any(values.imag) else values
+    return np.ascontiguousarray(kept)
+
+
 def _csr_arrays(matrix: sparse.csr_matrix) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    matrix.eliminate_zeros()
     return (
         matrix.indptr.astype(np.int64),
         matrix.indices.astype(np.int32),
-        np.ascontiguousarray(matrix.data, dtype=np.complex128),
+        _real_if_possible(matrix.data),
     )
 
 
@@ -84,15 +94,14 @@ def action_tables(a: sparse.csr_matrix, jumps: list[sparse.csr_matrix]) -> Actio
     joined = (
         np.concatenate([item.row for item in lists] or [np.zeros(0)]).astype(np.int32),
         np.concatenate([item.col for item in lists] or [np.zeros(0)]).astype(np.int32),
-        np.concatenate([item.data.conj() for item in lists] or [np.zeros(0)]).astype(complex),
+        _real_if_possible(np.concatenate([item.data.conj() for item in lists] or [np.zeros(0)])),
     )
     pointers = np.cumsum([0, *(item.nnz for item in lists)]).astype(np.int64)
     weights = _weights(diagonal, factors)
-    pointer, column, value = _csr_arrays(left)
     return ActionTables(
         dimension,
-        (pointer, column, value.real.copy(), value.imag.copy()),
-        bool(np.all(value.real == 0)),
+        _csr_arrays(left.real.tocsr()),
+        _csr_arrays(left.imag.tocsr()),
         weights,
         _csr_arrays(stacked),
         joined,
@@ -101,23 +110,43 @@ def action_tables(a: sparse.csr_matrix, jumps: list[sparse.csr_matrix]) -> Actio
 
 
 @numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
-def _times_tile(pointer, column, real, imag, sign, imaginary, source, target):  # pragma: no cover
-    """``target = M source`` for tiles (2, D, TILE); ``sign`` -1 conjugates the matrix."""
-    for j in range(source.shape[1]):
-        for b in range(TILE):
-            target[0, j, b] = 0.0
-            target[1, j, b] = 0.0
+def _add_rows(i, rho, pointer, column, value, total):  # pragma: no cover
+    """``total += sum_k value[i, k] rho[k]`` on doubles, four rows at a time."""
+    position, last = pointer[i], pointer[i + 1]
+    while last - position >= 4:
+        a, b = value[position], value[position + 1]
+        c, d = value[position + 2], value[position + 3]
+        first, second = rho[column[position]], rho[column[position + 1]]
+        third, fourth = rho[column[position + 2]], rho[column[position + 3]]
+        for j in range(total.size):
+            total[j] += a * first[j] + b * second[j] + c * third[j] + d * fourth[j]
+        position += 4
+    while last - position >= 2:
+        a, b = value[position], value[position + 1]
+        first, second = rho[column[position]], rho[column[position + 1]]
+        for j in range(total.size):
+            total[j] += a * first[j] + b * second[j]
+        position += 2
+    if position < last:
+        a, first = value[position], rho[column[position]]
+        for j in range(total.size):
+            total[j] += a * first[j]
+
+
+@numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
+def _add_columns(tile, pointer, column, value, sign, total):  # pragma: no cover
+    """``total[b] += sign * (rho M^T)[b]`` for the rows b whose transpose is in ``tile``."""
+    sums = np.empty(2 * TILE)
+    for j in range(tile.shape[0]):
+        sums[:] = 0.0
         for position in range(pointer[j], pointer[j + 1]):
-            other = column[position]
-            y = sign * imag[position]
-            for b in range(TILE):
-                target[0, j, b] -= y * source[1, other, b]
-                target[1, j, b] += y * source[0, other, b]
-            if not imaginary:
-                x = real[position]
-                for b in range(TILE):
-                    target[0, j, b] += x * source[0, other, b]
-                    target[1, j, b] += x * source[1, other, b]
+            factor = sign * value[position]
+            source = tile[column[position]]
+            for b in range(2 * TILE):
+                sums[b] += factor * source[b]
+        for b in range(total.shape[0]):
+            total[b, 2 * j] += sums[2 * b]
+            total[b, 2 * j + 1] += sums[2 * b + 1]
 
 
 @numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
@@ -132,32 +161,16 @@ def _add_jumps(i, rho, row, j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr):  #
 
 
 @numba.njit(parallel=True, cache=True, fastmath={"nsz", "contract", "reassoc"})
-def _left(rho, out, pointer, column, real, imag, imaginary):  # pragma: no cover
-    dimension = rho.shape[0]
-    for block in numba.prange((dimension + TILE - 1) // TILE):
-        first = block * TILE
-        width = min(TILE, dimension - first)
-        source = np.zeros((2, dimension, TILE))
-        target = np.empty((2, dimension, TILE))
-        for i in range(dimension):
-            for b in range(width):
-                source[0, i, b] = rho[i, first + b].real
-                source[1, i, b] = rho[i, first + b].imag
-        _times_tile(pointer, column, real, imag, 1.0, imaginary, source, target)
-        for i in range(dimension):
-            for b in range(width):
-                out[i, first + b] = complex(target[0, i, b], target[1, i, b])
-
-
-@numba.njit(parallel=True, cache=True, fastmath={"nsz", "contract", "reassoc"})
-def _right(
+def _apply(
     rho,
+    doubles,
     out,
-    pointer,
-    column,
-    real,
-    imag,
-    imaginary,
+    x_ptr,
+    x_col,
+    x_val,
+    y_ptr,
+    y_col,
+    y_val,
     weights,
     j_ptr,
     j_col,
@@ -171,19 +184,29 @@ def _right(
     for block in numba.prange((dimension + TILE - 1) // TILE):
         first = block * TILE
         height = min(TILE, dimension - first)
-        source = np.zeros((2, dimension, TILE))
-        target = np.empty((2, dimension, TILE))
-        for j in range(dimension):
+        tile = np.zeros((dimension, 2 * TILE))
+        for b in range(height):
+            for j in range(dimension):
+                tile[j, 2 * b] = doubles[first + b, 2 * j]
+                tile[j, 2 * b + 1] = doubles[first + b, 2 * j + 1]
+        turned = np.zeros((height, 2 * dimension))
+        mixed = x_val.size > 0
+        straight = np.zeros((height if mixed else 1, 2 * dimension))
+        for b in range(height):
+            _add_rows(first + b, doubles, y_ptr, y_col, y_val, turned[b])
+        _add_columns(tile, y_ptr, y_col, y_val, -1.0, turned)
+        if mixed:
             for b in range(height):
-                source[0, j, b] = rho[first + b, j].real
-                source[1, j, b] = rho[first + b, j].imag
-        _times_tile(pointer, column, real, imag, -1.0, imaginary, source, target)
-        for j in range(dimension):
-            for b in range(height):
-                i = first + b
-                out[i, j] += weights[i, j] * rho[i, j] + complex(target[0, j, b], target[1, j, b])
+                _add_rows(first + b, doubles, x_ptr, x_col, x_val, straight[b])
+            _add_columns(tile, x_ptr, x_col, x_val, 1.0, straight)
         for b in range(height):
             i = first + b
+            for j in range(dimension):
+                rotated = complex(-turned[b, 2 * j + 1], turned[b, 2 * j])
+                out[i, j] = weights[i, j] * rho[i, j] + rotated
+            if mixed:
+                for j in range(dimension):
+                    out[i, j] += complex(straight[b, 2 * j], straight[b, 2 * j + 1])
             _add_jumps(i, rho, out[i], j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr)
 
 
@@ -194,12 +217,12 @@ def apply_tables(
     rho = np.ascontiguousarray(rho, dtype=np.complex128)
     if out is None:
         out = np.empty_like(rho)
-    _left(rho, out, *tables.left, tables.imaginary)
-    _right(
+    _apply(
         rho,
+        rho.view(np.float64),
         out,
-        *tables.left,
-        tables.imaginary,
+        *tables.real,
+        *tables.imaginary,
         tables.weights,
         *tables.jumps,
         *tables.entries,
