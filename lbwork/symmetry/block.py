@@ -68,20 +68,25 @@ class OrbitBasis:
 
 def rows_of_terms(
     terms: CanonicalTerms, states: np.ndarray, sites: int, base: int
-) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Non-zeros of L in the rows ``states``: (row positions, column states, values), unsorted.
+) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
+    """Non-zeros of L in the rows ``states``: (row positions, column states, values, diagonal).
 
-    The identity component of L is not among ``terms`` and must be added by the caller.
+    The diagonal, complex (n,), comes apart since it needs no look-up; the other three, unsorted,
+    are off the diagonal. The identity component of L is not among ``terms``.
     """
     digits = digits_of(states, sites, base)
+    diagonal = np.zeros(states.size, dtype=complex)
     parts: list[tuple[np.ndarray, np.ndarray, np.ndarray]] = []
     for support, matrix in terms.items():
-        compressed = sparse.csr_matrix(matrix)
         count = len(support)
         powers = base ** np.arange(count - 1, -1, -1)
-        weights = np.array([base ** (sites - 1 - site) for site in support], dtype=np.int64)
         local_of = digits[:, list(support)]
         local = local_of @ powers
+        diagonal += matrix.diagonal()[local]
+        compressed = sparse.csr_matrix(matrix - np.diag(matrix.diagonal()))
+        if compressed.nnz == 0:
+            continue
+        weights = np.array([base ** (sites - 1 - site) for site in support], dtype=np.int64)
         rest = states.astype(np.int64) - local_of @ weights
         placed = local_digits(base, count) @ weights
         lengths = np.diff(compressed.indptr)[local]
@@ -92,11 +97,9 @@ def rows_of_terms(
         parts.append((rows, columns.astype(np.uint64), compressed.data[entries]))
     if not parts:
         nothing = np.zeros(0, dtype=np.int64)
-        return nothing, nothing.astype(np.uint64), nothing.astype(complex)
-    rows_all, columns_all, values_all = (
-        np.concatenate(arrays) for arrays in zip(*parts, strict=True)
-    )
-    return rows_all, columns_all, values_all
+        return nothing, nothing.astype(np.uint64), nothing.astype(complex), diagonal
+    rows, columns, values = (np.concatenate(arrays) for arrays in zip(*parts, strict=True))
+    return rows, columns, values, diagonal
 
 
 def entry_scale(terms: CanonicalTerms) -> float:
@@ -115,10 +118,13 @@ def assemble_block(
     """Complex sector matrix B with ``L V = V B``; ``constant`` is the identity component of L."""
     dimension = orbit_basis.dimension
     step = max(_CHUNK_ENTRIES // _entries_per_row(terms), 1)
-    slabs = []
+    slabs, diagonals = [], []
     for begin in range(0, dimension, step):
         states = orbit_basis.states[begin : begin + step]
-        rows, columns, values = rows_of_terms(terms, states, orbit_basis.sites, orbit_basis.base)
+        rows, columns, values, diagonal = rows_of_terms(
+            terms, states, orbit_basis.sites, orbit_basis.base
+        )
+        diagonals.append(diagonal)
         index, amplitudes = orbit_basis.locate(columns)
         entries = values * amplitudes / orbit_basis.amplitudes[begin + rows]
         slabs.append(
@@ -126,8 +132,8 @@ def assemble_block(
                 (entries, (rows, index)), shape=(states.size, dimension), dtype=complex
             )
         )
-    block = sparse.vstack(slabs, format="csr")
-    block = block + constant * sparse.identity(dimension, dtype=complex, format="csr")
+    block = sparse.csr_matrix(sparse.vstack(slabs, format="csr"))
+    block = block + sparse.diags_array(constant + np.concatenate(diagonals), format="csr")
     block.data[np.abs(block.data) < 1e-15 * entry_scale(terms)] = 0
     block.eliminate_zeros()
     block.sort_indices()
@@ -229,8 +235,10 @@ def check_block(
     for operation in images:
         states = numbers_of(operation.apply(digits)[0], orbit_basis.base)
         index, amplitudes = orbit_basis.locate(states)
-        result = constant * amplitudes * vector[index]
-        rows, columns, values = rows_of_terms(terms, states, orbit_basis.sites, orbit_basis.base)
+        rows, columns, values, diagonal = rows_of_terms(
+            terms, states, orbit_basis.sites, orbit_basis.base
+        )
+        result = (constant + diagonal) * amplitudes * vector[index]
         column_index, column_amplitudes = orbit_basis.locate(columns)
         contribution = values * column_amplitudes * vector[column_index]
         result += np.bincount(rows, contribution.real, states.size)
