@@ -49,6 +49,8 @@ _HOMES = {
     "level_statistics": "lbwork.levels",
     "RunStore": "lbwork.store",
     "audit": "lbwork.study",
+    "figures_of": "lbwork.report",
+    "save_figure": "lbwork.report",
 }
 
 __all__ = ["__version__", *sorted(_HOMES)]
