@@ -6,7 +6,7 @@ __all__ = ["class_name", "finding", "reason_undecided"]
 
 _NAMES = {"A": "A", "AI+": "AI-dagger", "AII+": "AII-dagger"}
 _SIGNS = {
-    "A": "no transposition symmetry",
+    "A": "the absence of a transposition symmetry",
     "AI+": "its symmetry under transposition",
     "AII+": "its transposition symmetry of square -1",
 }

@@ -41,7 +41,7 @@ def test_class_a_is_named_from_several_sectors(ginibre_spectra: list[np.ndarray]
     verdict = judge(*ginibre_spectra[:4])
     assert verdict.verdict == "A"
     assert verdict.confidence > 0.99
-    assert "class A, as no transposition symmetry requires" in verdict.sentence
+    assert "class A, as the absence of a transposition symmetry requires" in verdict.sentence
     assert verdict.mean_ratio is not None and verdict.mean_cosine is not None
     assert verdict.mean_ratio.low < 0.738 < verdict.mean_ratio.high
     assert verdict.mean_cosine.low < -0.244 < verdict.mean_cosine.high
