@@ -49,8 +49,8 @@ def test_twenty_kills(undisturbed, tmp_path):
     reference = levels_of(reference_folder / "runs", reference_run)
     random = np.random.default_rng(20)
     killed = 0
-    for delay in random.uniform(0.3 * duration, 1.02 * duration, size=20):
-        folder = tmp_path / f"kill-{killed}"
+    for number, delay in enumerate(random.uniform(0.3 * duration, 1.02 * duration, size=20)):
+        folder = tmp_path / f"kill-{number}"
         folder.mkdir()
         if not kill_once(folder, delay):
             continue
