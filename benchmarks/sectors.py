@@ -55,7 +55,7 @@ def half_filled(report: SymmetryReport, translate: bool) -> sparse.csr_matrix:
         generators = [GroupGenerator("translation", report.translation.operation, sites)]
     basis = build_basis(report.charges, label, generators, [0] * len(generators), sites, 4, 6400)
     return assemble_block(
-        report.terms, report.constant, OrbitBasis(basis, bool(generators), sites, 4)
+        report.rows, report.constant, OrbitBasis(basis, bool(generators), sites, 4)
     )
 
 

@@ -6,6 +6,8 @@ import os
 import platform
 import resource
 import sys
+from contextlib import AbstractContextManager
+from functools import lru_cache
 from importlib import metadata
 from typing import Any
 
@@ -13,7 +15,13 @@ import threadpoolctl
 
 from lbwork import defaults
 
-__all__ = ["available_memory", "peak_memory", "provenance", "usable_memory"]
+__all__ = [
+    "available_memory",
+    "limited_threads",
+    "peak_memory",
+    "provenance",
+    "usable_memory",
+]
 
 _PACKAGES = ("lbwork", "numpy", "scipy", "quspin", "numba", "h5py", "matplotlib")
 
@@ -47,6 +55,20 @@ def provenance() -> dict[str, Any]:
         "thread_pools": pools,
         "memory_available": available_memory(),
     }
+
+
+@lru_cache(maxsize=1)
+def _thread_pools() -> threadpoolctl.ThreadpoolController:
+    return threadpoolctl.ThreadpoolController()
+
+
+def limited_threads(count: int) -> AbstractContextManager[object]:
+    """Context in which the linear-algebra libraries use at most ``count`` threads.
+
+    The libraries are looked up once per process, since that costs as much as a small eigenvalue
+    problem; they must have been imported before the first call.
+    """
+    return _thread_pools().limit(limits=count)
 
 
 def available_memory() -> int:

@@ -13,10 +13,10 @@ import scipy.sparse as sparse
 from scipy.linalg import lapack
 from scipy.sparse.csgraph import connected_components
 from scipy.spatial import cKDTree
-from threadpoolctl import threadpool_limits
 
 from lbwork import defaults
 from lbwork.errors import NotCertifiedError
+from lbwork.provenance import limited_threads
 from lbwork.spectrum.parts import Parts
 from lbwork.spectrum.records import SpectrumCertificate
 
@@ -75,7 +75,7 @@ def sample_levels(
         samples = 1
     chosen = generator.choice(candidates, size=min(samples, candidates.size), replace=False)
     worst = 0.0
-    with threadpool_limits(limits=threads):
+    with limited_threads(threads):
         for index in chosen:
             matrix = parts.dense(int(part_of[index]))
             worst = max(worst, level_residual(matrix, eigenvalues[index], generator)[0])

@@ -9,9 +9,9 @@ from __future__ import annotations
 
 import numpy as np
 from scipy.linalg import lapack
-from threadpoolctl import threadpool_limits
 
 from lbwork.errors import NotCertifiedError
+from lbwork.provenance import limited_threads
 from lbwork.spectrum.triangular import complex_schur_form, triangular_condition_numbers
 
 __all__ = ["dense_levels"]
@@ -30,7 +30,7 @@ def dense_levels(matrix: np.ndarray, threads: int) -> tuple[np.ndarray, np.ndarr
     """
     if matrix.shape[0] == 1:
         return matrix.astype(complex).ravel(), np.ones(1)
-    with threadpool_limits(limits=threads):
+    with limited_threads(threads):
         return _levels(matrix)
 
 

@@ -8,6 +8,7 @@ non-zeros of those rows and the whole superoperator is never formed.
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
@@ -18,7 +19,14 @@ from lbwork.symmetry.canonical import CanonicalTerms, local_digits
 from lbwork.symmetry.monomials import MonomialMap
 from lbwork.symmetry.sector_basis import digits_of, numbers_of
 
-__all__ = ["OrbitBasis", "assemble_block", "real_form", "sector_isometry"]
+__all__ = [
+    "LocalRows",
+    "OrbitBasis",
+    "assemble_block",
+    "local_rows",
+    "real_form",
+    "sector_isometry",
+]
 
 _CHUNK_ENTRIES = 4_000_000
 
@@ -66,8 +74,29 @@ class OrbitBasis:
         return index[back], amplitudes
 
 
+@dataclass(frozen=True, eq=False)
+class LocalRows:
+    """One local term by rows: its diagonal and the csr arrays of the rest."""
+
+    support: tuple[int, ...]
+    diagonal: np.ndarray
+    pointers: np.ndarray
+    columns: np.ndarray
+    values: np.ndarray
+
+
+def local_rows(terms: CanonicalTerms) -> tuple[LocalRows, ...]:
+    """Prepare the terms of a generator for :func:`rows_of_terms`, once for all sectors."""
+    prepared = []
+    for support, matrix in terms.items():
+        diagonal = matrix.diagonal().copy()
+        rest = sparse.csr_matrix(matrix - np.diag(diagonal))
+        prepared.append(LocalRows(support, diagonal, rest.indptr, rest.indices, rest.data))
+    return tuple(prepared)
+
+
 def rows_of_terms(
-    terms: CanonicalTerms, states: np.ndarray, sites: int, base: int
+    terms: Sequence[LocalRows], states: np.ndarray, sites: int, base: int
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
     """Non-zeros of L in the rows ``states``: (row positions, column states, values, diagonal).
 
@@ -76,44 +105,42 @@ def rows_of_terms(
     """
     digits = digits_of(states, sites, base)
     diagonal = np.zeros(states.size, dtype=complex)
-    parts: list[tuple[np.ndarray, np.ndarray, np.ndarray]] = []
-    for support, matrix in terms.items():
-        count = len(support)
+    nothing = np.zeros(0, dtype=np.int64)
+    parts = [(nothing, nothing.astype(np.uint64), nothing.astype(complex))]
+    for term in terms:
+        count = len(term.support)
         powers = base ** np.arange(count - 1, -1, -1)
-        local_of = digits[:, list(support)]
+        local_of = digits[:, list(term.support)]
         local = local_of @ powers
-        diagonal += matrix.diagonal()[local]
-        compressed = sparse.csr_matrix(matrix - np.diag(matrix.diagonal()))
-        if compressed.nnz == 0:
+        diagonal += term.diagonal[local]
+        if term.values.size == 0:
             continue
-        weights = np.array([base ** (sites - 1 - site) for site in support], dtype=np.int64)
+        weights = np.array([base ** (sites - 1 - site) for site in term.support], dtype=np.int64)
         rest = states.astype(np.int64) - local_of @ weights
         placed = local_digits(base, count) @ weights
-        lengths = np.diff(compressed.indptr)[local]
+        lengths = np.diff(term.pointers)[local]
         rows = np.repeat(np.arange(states.size), lengths)
         within = np.arange(rows.size) - np.repeat(np.cumsum(lengths) - lengths, lengths)
-        entries = compressed.indptr[local][rows] + within
-        columns = rest[rows] + placed[compressed.indices[entries]]
-        parts.append((rows, columns.astype(np.uint64), compressed.data[entries]))
-    if not parts:
-        nothing = np.zeros(0, dtype=np.int64)
-        return nothing, nothing.astype(np.uint64), nothing.astype(complex), diagonal
+        entries = term.pointers[local][rows] + within
+        columns = rest[rows] + placed[term.columns[entries]]
+        parts.append((rows, columns.astype(np.uint64), term.values[entries]))
     rows, columns, values = (np.concatenate(arrays) for arrays in zip(*parts, strict=True))
     return rows, columns, values, diagonal
 
 
-def entry_scale(terms: CanonicalTerms) -> float:
+def entry_scale(terms: Sequence[LocalRows]) -> float:
     """Largest modulus of an entry of the local terms, 1 for the zero generator."""
-    return max((float(np.abs(matrix).max()) for matrix in terms.values()), default=1.0)
+    sizes = [float(np.abs(part).max(initial=0)) for t in terms for part in (t.diagonal, t.values)]
+    return max(sizes, default=1.0)
 
 
-def _entries_per_row(terms: CanonicalTerms) -> int:
+def _entries_per_row(terms: Sequence[LocalRows]) -> int:
     """Largest possible number of non-zeros that all terms together put into one row."""
-    return 1 + sum(int((matrix != 0).sum(axis=1).max()) for matrix in terms.values())
+    return 1 + sum(int(np.diff(term.pointers).max()) for term in terms)
 
 
 def assemble_block(
-    terms: CanonicalTerms, constant: complex, orbit_basis: OrbitBasis
+    terms: Sequence[LocalRows], constant: complex, orbit_basis: OrbitBasis
 ) -> sparse.csr_matrix:
     """Complex sector matrix B with ``L V = V B``; ``constant`` is the identity component of L."""
     dimension = orbit_basis.dimension
@@ -212,7 +239,7 @@ def sector_isometry(orbit_basis: OrbitBasis, states: np.ndarray) -> sparse.csr_m
 
 
 def check_block(
-    terms: CanonicalTerms,
+    terms: Sequence[LocalRows],
     constant: complex,
     block: sparse.csr_matrix,
     orbit_basis: OrbitBasis,

@@ -129,12 +129,10 @@ class SectorPlan:
                 f"sector '{sector.label}' has {orbits.dimension} basis states, "
                 f"characters say {sector.dimension}"
             )
-        matrix = assemble_block(report.terms, report.constant, orbits)
+        matrix = assemble_block(report.rows, report.constant, orbits)
         group = group_from_generators(sector.generators, sites, base)
         step = max(group.order // 3, 1)
-        mismatch = check_block(
-            report.terms, report.constant, matrix, orbits, group.elements[::step]
-        )
+        mismatch = check_block(report.rows, report.constant, matrix, orbits, group.elements[::step])
         if mismatch > defaults.SYMMETRY_TOLERANCE:
             raise SymmetryError(
                 f"sector '{sector.label}' is not invariant: mismatch {mismatch:.1e} above "
@@ -142,7 +140,7 @@ class SectorPlan:
             )
         unitary = None
         if sector.reality is not None:
-            scale = entry_scale(report.terms)
+            scale = entry_scale(report.rows)
             matrix, unitary = real_form(matrix, sector.reality, orbits, scale)
         return SectorBlock(sector, matrix, mismatch, orbits, unitary, group, report.rotation)
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -16,6 +17,7 @@ from lbwork.symmetry.algebra import (
     commuting_generators,
     ket_generators,
 )
+from lbwork.symmetry.block import LocalRows, local_rows
 from lbwork.symmetry.canonical import CanonicalTerms, canonical_terms
 from lbwork.symmetry.charges import Charge, find_charges
 from lbwork.symmetry.discrete import (
@@ -56,6 +58,11 @@ class SymmetryReport:
     def base(self) -> int:
         """States per site of the doubled chain, ``d**2``."""
         return self.model.local_dimension**2
+
+    @cached_property
+    def rows(self) -> tuple[LocalRows, ...]:
+        """The local terms prepared for reading off rows of the generator."""
+        return local_rows(self.terms)
 
     @property
     def symmetries(self) -> tuple[DiscreteSymmetry, ...]:
