@@ -119,8 +119,8 @@ LEVEL_SAMPLES_CHEAP_DIMENSION: Final = 800
 IDENTICAL_PART_DIMENSION: Final = 64
 """Parts up to this size are compared byte by byte, so that identical ones are solved once."""
 
-DENSE_SECONDS_REAL: Final = 1.1e-9
-DENSE_SECONDS_COMPLEX: Final = 2.6e-9
+DENSE_SECONDS_REAL: Final = 8e-10
+DENSE_SECONDS_COMPLEX: Final = 1.7e-9
 """Seconds of a dense sector over the cube of its dimension, one core at about 10 Gflop/s."""
 
 DENSE_BYTES_REAL: Final = 48
@@ -178,4 +178,4 @@ CONSERVATION_TOLERANCE: Final = 1e-12
 """A term conserves the magnetisation when it changes it by less than this times its norm."""
 
 FILTER_SMALLEST_DIMENSION: Final = 60
-"""Blocks up to this size are not worth a Krylov search."""
+"""Blocks up to this size are always solved directly instead of by a Krylov search."""

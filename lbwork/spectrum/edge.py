@@ -13,7 +13,7 @@ from lbwork.generator import Lindbladian
 from lbwork.model import Model
 from lbwork.spectrum.dense import dense_levels
 from lbwork.spectrum.parts import Parts, irreducible_parts, rounding_scale
-from lbwork.spectrum.rightmost import SlowLevels, rightmost_levels
+from lbwork.spectrum.rightmost import SlowLevels, require_decay, rightmost_levels
 from lbwork.symmetry import Sector, SectorBlock, SectorPlan
 
 __all__ = ["GapOptions", "SectorEdge", "sector_edge", "zero_tolerance"]
@@ -76,6 +76,7 @@ def _iterative_part(
         found.append(
             rightmost_levels(matrix, options.levels, options.seed + number, 1 + 0.07 * number)
         )
+        require_decay(found[-1], tolerance, label)
         zero = np.abs(found[-1].levels) <= tolerance
         kernels = np.hstack([kernels, found[-1].vectors[:, zero]])
         strengths = np.linalg.svd(kernels, compute_uv=False) if kernels.size else np.zeros(0)
@@ -84,11 +85,6 @@ def _iterative_part(
         if number + 1 >= options.starts and rank <= number:
             break
     slow = [item.select(np.abs(item.levels) > tolerance) for item in found]
-    if any(item.levels.size == 0 for item in slow):
-        raise NotCertifiedError(
-            f"sector '{label}': only zero modes among the {options.levels} slowest levels of a "
-            f"part of size {matrix.shape[0]}; ask for more levels"
-        )
     # Levels come slowest first.
     rates = np.array([-float(item.levels[0].real) for item in slow])
     allowed = defaults.GAP_AGREEMENT_TOLERANCE * float(rates.min()) + tolerance
@@ -120,7 +116,7 @@ def sector_edge(
     slow = [levels[np.abs(levels) > tolerance]]
     for index in np.flatnonzero(parts.sizes > 1):
         size = int(parts.sizes[index])
-        if size <= options.dense_dimension:
+        if size <= max(options.dense_dimension, defaults.FILTER_SMALLEST_DIMENSION):
             levels = dense_levels(parts.dense(int(index)), defaults.DENSE_THREADS)[0]
             zero_modes += int(np.sum(np.abs(levels) <= tolerance))
             slow.append(levels[np.abs(levels) > tolerance])

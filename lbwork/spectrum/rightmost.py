@@ -19,7 +19,7 @@ from lbwork import defaults
 from lbwork.errors import NotCertifiedError
 from lbwork.spectrum.parts import block_norm
 
-__all__ = ["SlowLevels", "rightmost_levels"]
+__all__ = ["SlowLevels", "require_decay", "rightmost_levels"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -30,9 +30,22 @@ class SlowLevels:
     vectors: np.ndarray
     residuals: np.ndarray
 
-    def select(self, chosen: np.ndarray | slice) -> SlowLevels:
+    def select(self, chosen: np.ndarray) -> SlowLevels:
         """The levels at the given positions or where a mask is true."""
         return SlowLevels(self.levels[chosen], self.vectors[:, chosen], self.residuals[chosen])
+
+
+def require_decay(found: SlowLevels, tolerance: float, label: str) -> None:
+    """Raise NotCertifiedError when no level found decays.
+
+    Only a decaying level proves that all slower ones were found: a closed subspace can hold
+    any number of levels on the imaginary axis.
+    """
+    if np.all(np.abs(found.levels.real) <= tolerance):
+        raise NotCertifiedError(
+            f"sector '{label}': all {found.levels.size} slowest levels lie on the imaginary axis "
+            "and there may be more; ask for more levels or use a factorisation"
+        )
 
 
 def _filter(matrix: sparse.csr_matrix, norm: float, steps: int, stretch: float) -> LinearOperator:
@@ -58,11 +71,10 @@ def rightmost_levels(
 
     ``stretch`` (close to 1) changes the time of the exponential, so that two calls do not share
     accidental coincidences of ``exp(t lambda)``. A multiple level may be found once only: combine
-    starts to count it. Small blocks are solved densely. Raises NotCertifiedError when the search
-    does not converge.
+    starts to count it. The block must have more than
+    :data:`lbwork.defaults.FILTER_SMALLEST_DIMENSION` states. Raises NotCertifiedError when the
+    search does not converge.
     """
-    if matrix.shape[0] <= defaults.FILTER_SMALLEST_DIMENSION:
-        return _project(matrix, np.eye(matrix.shape[0])).select(slice(count))
     norm = block_norm(matrix)
     start = np.random.default_rng(seed).normal(size=matrix.shape[0])
     steps = round(defaults.FILTER_TIME / defaults.FILTER_STEP)
@@ -92,7 +104,7 @@ def _project(matrix: sparse.csr_matrix, vectors: np.ndarray) -> SlowLevels:
 
     For a real block the span is made real, so that conjugate pairs come out exactly.
     """
-    if not np.iscomplexobj(matrix.data) and np.iscomplexobj(vectors):
+    if not np.iscomplexobj(matrix.data):
         vectors = np.hstack([vectors.real, vectors.imag])
     left, strengths, _ = np.linalg.svd(vectors, full_matrices=False)
     basis = left[:, strengths > 1e-8 * strengths[0]]

@@ -1,7 +1,7 @@
 """Null vectors of the generator in one sector.
 
-Small sectors: inverse iteration on a block of vectors with one factorisation, which converges to
-the smallest singular values whatever their multiplicity. Large irreducible ones: Krylov search in
+Small sectors: inverse iteration on a block of vectors with one factorisation, which finds the whole
+null space whatever its dimension. Large irreducible ones: Krylov search in
 the exponential of the generator from independent starts, joined until no new null vector appears.
 """
 
@@ -18,13 +18,16 @@ from threadpoolctl import threadpool_limits
 
 from lbwork import defaults
 from lbwork.errors import CapacityError
-from lbwork.spectrum.rightmost import rightmost_levels
+from lbwork.spectrum.rightmost import require_decay, rightmost_levels
 from lbwork.symmetry import SectorBlock
 
 __all__ = ["SectorKernel", "sector_kernel"]
 
 Solver = Callable[[np.ndarray, bool], np.ndarray]
-"""``solve(columns, adjoint)`` applies the inverse of the block or of its adjoint."""
+"""``solve(columns, adjoint)`` applies the inverse of the shifted block or of its adjoint."""
+
+_SHIFT = 1e-12
+_INVERSE_STEPS = 6
 
 
 @dataclass(frozen=True, eq=False)
@@ -32,8 +35,8 @@ class SectorKernel:
     """``right`` (n, m): orthonormal columns with ``B v = 0``; ``left()``: with ``B^dag v = 0``.
 
     Left vectors are only needed to tell several steady states apart, so they are computed on call.
-    ``separation``: size of the smallest mode that is not zero, a singular value (``factorised``) or
-    an eigenvalue (``filtered``); infinity where there is no other mode.
+    ``separation``: size of the next mode that was met, ``||B v||`` (``factorised``) or an
+    eigenvalue (``filtered``), infinity where there is none.
     """
 
     right: np.ndarray
@@ -47,16 +50,13 @@ class SectorKernel:
         return int(self.right.shape[1])
 
 
-def _dense_solver(matrix: sparse.csr_matrix, scale: float) -> Solver:
+def _dense_solver(matrix: sparse.csr_matrix, shift: float) -> Solver:
     dense = np.asfortranarray(matrix.toarray())
+    diagonal = np.arange(matrix.shape[0])
+    dense[diagonal, diagonal] -= shift
     real = not np.iscomplexobj(dense)
     factorise, solve = (lapack.dgetrf, lapack.dgetrs) if real else (lapack.zgetrf, lapack.zgetrs)
     factors, pivots, _ = factorise(dense, overwrite_a=1)
-    # The block is singular when it has a zero mode: keep the direction, avoid the division by zero.
-    smallest = np.finfo(float).eps * scale * 1e-3
-    diagonal = np.arange(matrix.shape[0])
-    tiny = diagonal[np.abs(factors[diagonal, diagonal]) < smallest]
-    factors[tiny, tiny] = smallest
 
     def apply(columns: np.ndarray, adjoint: bool) -> np.ndarray:
         return np.asarray(solve(factors, pivots, columns, trans=(1 if real else 2) * adjoint)[0])
@@ -64,9 +64,7 @@ def _dense_solver(matrix: sparse.csr_matrix, scale: float) -> Solver:
     return apply
 
 
-def _sparse_solver(matrix: sparse.csr_matrix, scale: float) -> Solver:
-    # Every level has a real part <= 0: a tiny positive shift keeps the factorisation regular.
-    shift = 10 * np.finfo(float).eps * scale
+def _sparse_solver(matrix: sparse.csr_matrix, shift: float) -> Solver:
     identity = sparse.identity(matrix.shape[0], dtype=matrix.dtype, format="csc")
     factors = splu((matrix.tocsc() - shift * identity).tocsc())
 
@@ -76,51 +74,49 @@ def _sparse_solver(matrix: sparse.csr_matrix, scale: float) -> Solver:
     return apply
 
 
-def _orthonormal(columns: np.ndarray) -> np.ndarray:
-    # Inverse iteration makes columns of very different size; scaling keeps the small ones.
-    columns = columns / np.linalg.norm(columns, axis=0)
-    return np.asarray(np.linalg.qr(columns)[0])
-
-
-def _smallest_singular(
-    matrix: sparse.csr_matrix, solve: Solver, count: int, adjoint: bool
-) -> tuple[np.ndarray, np.ndarray]:
-    """The ``count`` smallest singular values, ascending, with right (left if adjoint) vectors."""
-    generator = np.random.default_rng(20)
-    columns = generator.normal(size=(matrix.shape[0], count)).astype(matrix.dtype)
-    for _ in range(4):
-        columns = _orthonormal(solve(columns, not adjoint))
-        columns = _orthonormal(solve(columns, adjoint))
-    product = (matrix.conj().T if adjoint else matrix) @ columns
-    _, values, turned = np.linalg.svd(product, full_matrices=False)
-    return values[::-1], (columns @ turned.conj().T)[:, ::-1]
-
-
-def _factorised_kernel(matrix: sparse.csr_matrix, solve: Solver, tolerance: float) -> SectorKernel:
+def _null_space(
+    matrix: sparse.csr_matrix, solve: Solver, tolerance: float, adjoint: bool
+) -> tuple[np.ndarray, float]:
+    """Orthonormal null vectors of the matrix (of its adjoint), and the size of B on the next."""
+    operator = matrix.conj().T.tocsr() if adjoint else matrix
     size = matrix.shape[0]
     count = min(4, size)
+    generator = np.random.default_rng(20)
     while True:
-        values, right = _smallest_singular(matrix, solve, count, False)
+        columns = generator.normal(size=(size, count)).astype(matrix.dtype)
+        for _ in range(_INVERSE_STEPS):
+            columns = np.linalg.qr(solve(columns, adjoint))[0]
+        product = operator @ columns
+        values, turned = np.linalg.svd(product, full_matrices=False)[1:]
         null = int(np.sum(values <= tolerance))
         if null < count or count == size:
             break
         count = min(2 * count, size)
+    kernel = columns @ turned.conj().T[:, count - null :]
+    return kernel, float(values[count - null - 1]) if null < count else np.inf
 
-    def left() -> np.ndarray:
-        return _smallest_singular(matrix, solve, count, True)[1][:, :null]
 
-    separation = float(values[null]) if null < count else np.inf
-    return SectorKernel(right[:, :null], left, separation, "factorised")
+def _factorised_kernel(matrix: sparse.csr_matrix, scale: float, tolerance: float) -> SectorKernel:
+    # Every level has a real part <= 0, so a small positive shift keeps the factorisation regular
+    # and all zero modes equally dominant; powers of the inverse converge to the null space itself.
+    shift = _SHIFT * scale
+    dense = matrix.shape[0] <= defaults.STEADY_DENSE_DIMENSION
+    solve = (_dense_solver if dense else _sparse_solver)(matrix, shift)
+    right, separation = _null_space(matrix, solve, tolerance, False)
+    return SectorKernel(
+        right, lambda: _null_space(matrix, solve, tolerance, True)[0], separation, "factorised"
+    )
 
 
 def _filtered_side(
-    matrix: sparse.csr_matrix, tolerance: float, starts: int
+    matrix: sparse.csr_matrix, tolerance: float, starts: int, label: str
 ) -> tuple[np.ndarray, float]:
     """Orthonormal null vectors joined over independent starts, and the smallest other level."""
     kernel = np.zeros((matrix.shape[0], 0))
     size, number = np.inf, 0
     while True:
         found = rightmost_levels(matrix, defaults.GAP_LEVELS, 40 + number, 1 + 0.07 * number)
+        require_decay(found, tolerance, label)
         zero = np.abs(found.levels) <= tolerance
         if np.any(~zero):
             size = min(size, float(np.abs(found.levels[~zero]).min()))
@@ -152,13 +148,12 @@ def sector_kernel(
             f"{defaults.GAP_ITERATIVE_DIMENSION} of the zero-mode search; use fewer sites"
         )
     with threadpool_limits(limits=defaults.DENSE_THREADS):
-        if filtered and irreducible:
-            right, separation = _filtered_side(matrix, tolerance, 2)
+        if filtered and irreducible and size > defaults.FILTER_SMALLEST_DIMENSION:
+            right, separation = _filtered_side(matrix, tolerance, 2, block.sector.label)
 
             def left() -> np.ndarray:
-                return _filtered_side(matrix.conj().T.tocsr(), tolerance, 2)[0]
+                adjoint = matrix.conj().T.tocsr()
+                return _filtered_side(adjoint, tolerance, 2, block.sector.label)[0]
 
             return SectorKernel(right, left, separation, "filtered")
-        if size <= defaults.STEADY_DENSE_DIMENSION:
-            return _factorised_kernel(matrix, _dense_solver(matrix, scale), tolerance)
-        return _factorised_kernel(matrix, _sparse_solver(matrix, scale), tolerance)
+        return _factorised_kernel(matrix, scale, tolerance)

@@ -135,7 +135,7 @@ def zero_modes(
 
 def _words(methods: set[str], searched: int, excluded: bool) -> str:
     how = {
-        "factorised": "smallest singular values",
+        "factorised": "inverse iteration",
         "filtered": "Krylov search from independent starts",
     }
     text = f"{' and '.join(how[method] for method in sorted(methods))} in {searched} sectors"

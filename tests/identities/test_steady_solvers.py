@@ -105,3 +105,29 @@ def test_unknown_method_is_refused():
 def test_long_chains_are_refused_before_they_start():
     with pytest.raises(CapacityError, match="13 sites"):
         steady_state(driven_chain(13))
+
+
+def test_kernel_with_exactly_singular_pivots():
+    """A closed ring whose real block leaves several zero pivots: eight zero modes in one sector."""
+    model = Model(
+        name="closed",
+        sites=3,
+        boundary="periodic",
+        hamiltonian=(Term("X X + 0.4 Y Z + 0.4 Z Y"), Term("Z", on="first", coefficient=0.6)),
+    )
+    values = np.linalg.svd(kronecker_generator(model), compute_uv=False)
+    state = steady_state(model)
+    assert state.zero_modes == np.sum(values < 1e-10) == 8
+    assert len(state.states) == 8
+
+
+def test_closed_system_is_refused_by_the_filter():
+    """Without a decaying level the Krylov search cannot tell how many zero modes it missed."""
+    model = Model(
+        name="closed",
+        sites=3,
+        boundary="periodic",
+        hamiltonian=(Term("X X + 0.4 Y Z + 0.4 Z Y"), Term("Z", on="first", coefficient=0.6)),
+    )
+    with pytest.raises(NotCertifiedError, match=r"imaginary axis|converge"):
+        steady_state(model, options=SteadyOptions("filtered"))
