@@ -172,7 +172,7 @@ STEADY_POSITIVE: Final = 1e-10
 """A state with all eigenvalues above this is taken as having full rank."""
 
 STEADY_NEAR_DEGENERATE: Final = 1e-5
-"""Separation over the generator norm below which a steady state is reported as nearly degenerate."""
+"""Separation over the generator norm below which a steady state is called nearly degenerate."""
 
 CONSERVATION_TOLERANCE: Final = 1e-12
 """A term conserves the magnetisation when it changes it by less than this times its norm."""

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 from matplotlib.figure import Figure
+from matplotlib.text import Text
 
 from lbwork.errors import UsageError
 from lbwork.report import (
@@ -97,7 +98,9 @@ def test_zoomed_window_has_a_panel_of_its_own() -> None:
 
 @pytest.mark.parametrize("levels", [[0.0], [-1 + 2j], [0.0, 0.0], np.zeros(50), [-1e-9, -1e-9]])
 def test_degenerate_spectra_are_drawn(levels: list[complex]) -> None:
-    drawn(spectrum_figure([("all", levels, 1)], gap=0.0))
+    figure = drawn(spectrum_figure([("all", levels, 1)], gap=0.0))
+    assert len(figure.axes) >= 1
+    assert all(np.isfinite([*axes.get_xlim(), *axes.get_ylim()]).all() for axes in figure.axes)
 
 
 def test_real_spectra_are_sticks_and_a_density() -> None:
@@ -116,7 +119,10 @@ def test_few_real_levels_are_sticks_alone() -> None:
 
 
 def test_dollar_signs_in_labels_are_letters() -> None:
-    drawn(spectrum_figure([("price $ one", disc(5, 10), 1), ("_$", disc(5, 11), 1)], title="5 $"))
+    sectors = [("price $ one", disc(5, 10), 1), ("_$", disc(5, 11), 1)]
+    figure = drawn(spectrum_figure(sectors, title="5 $"))
+    words = [text.get_text() for text in figure.findobj(Text)]
+    assert any("price" in word for word in words)
 
 
 @pytest.mark.parametrize(
