@@ -9,11 +9,11 @@ from pathlib import Path
 from typing import Any
 
 from lbwork.errors import ModelError
-from lbwork.model.expressions import nearest
 from lbwork.model.model import Model
 from lbwork.model.terms import Jump, RandomOperator, Term
+from lbwork.model.words import nearest, shown
 
-__all__ = ["ABOUT_KEYS", "model_from_document", "model_from_toml", "model_to_toml", "read_toml"]
+__all__ = ["model_from_document", "model_from_toml", "model_to_toml", "parse_toml", "read_toml"]
 
 MAX_FILE_BYTES = 4_000_000
 MODEL_KEYS = (
@@ -38,26 +38,37 @@ def _known_keys(document: Mapping[str, Any], allowed: Iterable[str], place: str)
     for key in document:
         if key not in allowed:
             raise ModelError(
-                f"{place}: unknown key '{key}'{nearest(key, allowed)}; known keys are "
+                f"{place}: unknown key {shown(key)}{nearest(str(key), allowed)}; known keys are "
                 f"{', '.join(allowed)}"
             )
 
 
 def read_toml(path: Path) -> dict[str, Any]:
     """Read a TOML file; raises ModelError when it is missing, too large, not text or not TOML."""
+    place = shown(str(path))
     try:
         if path.is_dir():
-            raise ModelError(f"{path}: is a folder, not a model file")
-        if path.stat().st_size > MAX_FILE_BYTES:
-            raise ModelError(f"{path}: larger than {MAX_FILE_BYTES} bytes; is this a model file?")
-        text = path.read_bytes().decode("utf-8")
+            raise ModelError(f"{place}: is a folder; give the path of a model file")
+        # Read with a bound rather than asked for its size, which pipes and devices do not know.
+        with path.open("rb") as file:
+            content = file.read(MAX_FILE_BYTES + 1)
+    except OSError as error:
+        raise ModelError(
+            f"{place}: cannot be read ({error.strerror or error}); check the path"
+        ) from None
+    except ValueError as error:
+        raise ModelError(f"{place}: is not a path ({error}); check it") from None
+    if len(content) > MAX_FILE_BYTES:
+        raise ModelError(
+            f"{place}: more than {MAX_FILE_BYTES} bytes are no model file; check the path"
+        )
+    try:
+        text = content.decode("utf-8-sig")
     except UnicodeDecodeError as error:
         raise ModelError(
-            f"{path}: byte {error.start} is not UTF-8 text; save it as UTF-8"
+            f"{place}: not UTF-8 text from byte {error.start} on; save it as UTF-8"
         ) from None
-    except OSError as error:
-        raise ModelError(f"{path}: cannot be read ({error.strerror or error})") from None
-    return parse_toml(text, str(path))
+    return parse_toml(text, place)
 
 
 def parse_toml(text: str, place: str) -> dict[str, Any]:
@@ -65,13 +76,20 @@ def parse_toml(text: str, place: str) -> dict[str, Any]:
     try:
         return tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:
-        raise ModelError(f"{place}: not valid TOML: {error}") from None
-    except (RecursionError, ValueError) as error:
-        raise ModelError(f"{place}: not valid TOML ({type(error).__name__})") from None
+        reason = shown(str(error)).strip("'\"")
+    except RecursionError:
+        reason = "lists or tables are nested too deeply"
+    except ValueError as error:
+        # Numbers and dates that have the form of TOML but no value.
+        reason = shown(str(error)).strip("'\"")
+    raise ModelError(f"{place}: not valid TOML: {reason}; correct the file there")
 
 
 def model_from_toml(text: str, place: str = "model") -> Model:
-    """A model from the text of a model file."""
+    """A model from the text of a model file; ``place`` opens messages about its syntax.
+
+    Raises ModelError.
+    """
     return model_from_document(parse_toml(text, place))
 
 
@@ -83,13 +101,16 @@ def model_from_document(document: Mapping[str, Any]) -> Model:
             raise ModelError(f"model file: key '{key}' is missing; add it at the top")
     for key in ("name", "description", "boundary"):
         if not isinstance(document.get(key, ""), str):
-            raise ModelError(f"{key}: {document[key]!r} is not text; put it in quotes")
+            raise ModelError(f"{key}: {shown(document[key])} is not text; put it in quotes")
     parameters = document.get("parameters", {})
     if not isinstance(parameters, Mapping):
-        raise ModelError("parameters: write a table [parameters] with lines name = number")
+        raise ModelError(
+            f"parameters: {shown(parameters)} is not a table; write [parameters] and below it "
+            "lines name = number"
+        )
     about = document.get("about", {})
     if not isinstance(about, Mapping):
-        raise ModelError("about: write a table [about]")
+        raise ModelError(f"about: {shown(about)} is not a table; write [about] and lines below it")
     _known_keys(about, ABOUT_KEYS, "[about]")
     return Model(
         name=document["name"],
@@ -107,7 +128,10 @@ def _entries(document: Mapping[str, Any], key: str) -> list[tuple[Mapping[str, A
     entries = document.get(key, [])
     label = "hamiltonian term" if key == "hamiltonian" else "jump"
     if not isinstance(entries, list) or not all(isinstance(item, Mapping) for item in entries):
-        raise ModelError(f"{key}: write each entry under its own [[{key}]] heading")
+        raise ModelError(
+            f"{key}: {shown(entries)} is not a list of tables; write each entry under its own "
+            f"[[{key}]] heading"
+        )
     return [(item, f"{label} {index}") for index, item in enumerate(entries, start=1)]
 
 
@@ -115,31 +139,31 @@ def _operator(item: Mapping[str, Any], place: str) -> Any:
     given = [key for key in ("operator", "matrix", "random") if key in item]
     if len(given) != 1:
         reason = "none is given" if not given else f"{' and '.join(given)} are given"
-        raise ModelError(f"{place}: give exactly one of operator, matrix, random; {reason}")
+        raise ModelError(f"{place}: {reason}; give exactly one of operator, matrix, random")
     value = item[given[0]]
     if given[0] == "operator":
         if not isinstance(value, str):
-            raise ModelError(f"{place}: operator = {value!r} is not text; use matrix for numbers")
+            raise ModelError(
+                f"{place}: operator = {shown(value)} is not text; use matrix for numbers"
+            )
         return value
     if given[0] == "matrix":
         if not isinstance(value, list):
-            raise ModelError(f"{place}: matrix must be a list of rows, e.g. [[0, 1], [1, 0]]")
+            raise ModelError(
+                f"{place}: matrix = {shown(value)} is not a list of rows; write e.g. "
+                "[[0, 1], [1, 0]]"
+            )
         return value
     if not isinstance(value, Mapping):
         raise ModelError(
-            f'{place}: random must be a table, e.g. {{kind="hermitian", range=2, seed=1}}'
+            f"{place}: random = {shown(value)} is not a table; write e.g. "
+            '{kind = "hermitian", range = 2, seed = 1}'
         )
     _known_keys(value, RANDOM_KEYS, f"{place}: random")
     for key in RANDOM_KEYS:
         if key not in value:
-            raise ModelError(f"{place}: random needs the key '{key}'")
-    if not isinstance(value["kind"], str):
-        raise ModelError(f"{place}: random kind {value['kind']!r} is not text")
-    for key in ("range", "seed"):
-        number = value[key]
-        if isinstance(number, bool) or not isinstance(number, int | str if key == "seed" else int):
-            raise ModelError(f"{place}: random {key} {number!r} is not a whole number")
-    return RandomOperator(value["kind"], value["range"], value["seed"])
+            raise ModelError(f"{place}: random needs the key '{key}'; add it")
+    return RandomOperator(value["kind"], value["range"], value["seed"], place)
 
 
 def _term(item: Mapping[str, Any], place: str) -> Term:

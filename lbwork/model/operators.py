@@ -10,10 +10,11 @@ from functools import lru_cache
 
 import numpy as np
 
-__all__ = ["known_operator_names", "local_operator"]
+__all__ = ["known_operator_names", "local_operator", "operator_hint"]
 
-_UNIT = re.compile(r"E(\d)(\d)")
-_PROJECTOR = re.compile(r"P(\d)")
+_UNIT = re.compile(r"E(\d)(\d)", re.ASCII)
+_PROJECTOR = re.compile(r"P(\d)", re.ASCII)
+_SPIN_HALF = ("X", "Y", "Z", "n")
 
 
 @lru_cache(maxsize=256)
@@ -21,7 +22,8 @@ def local_operator(name: str, dimension: int) -> np.ndarray | None:
     """The matrix of a named operator, complex128 (d, d); None when the name is not known.
 
     ``I``; ``Sx Sy Sz S+ S-`` for spin (d-1)/2; ``X Y Z`` (Pauli) and ``n`` (occupation, |0><0|) for
-    d = 2; matrix units ``Eab`` = |a><b| and projectors ``Pa`` = |a><a|.
+    d = 2; ``Zd`` = diag(w^a), w = exp(2 pi i/d), and ``Xd`` = sum |a+1><a| (modulo d); matrix units
+    ``Eab`` = |a><b| and projectors ``Pa`` = |a><a|.
     """
     matrix = _build(name, dimension)
     if matrix is not None:
@@ -48,6 +50,8 @@ def _build(name: str, dimension: int) -> np.ndarray | None:
         "Sx": (raising + raising.conj().T) / 2,
         "Sy": (raising - raising.conj().T) / 2j,
         "Sz": np.diag(levels.astype(complex)),
+        "Xd": np.roll(np.eye(dimension, dtype=complex), 1, axis=0),
+        "Zd": np.diag(np.exp(2j * np.pi * np.arange(dimension) / dimension)),
     }
     if name in simple:
         return simple[name]
@@ -65,8 +69,17 @@ def _build(name: str, dimension: int) -> np.ndarray | None:
 
 def known_operator_names(dimension: int) -> tuple[str, ...]:
     """Names that :func:`local_operator` knows for this local dimension."""
-    names = ["I", "Sx", "Sy", "Sz", "S+", "S-"]
+    names = ["I", "Sx", "Sy", "Sz", "S+", "S-", "Xd", "Zd"]
     if dimension == 2:
-        names += ["X", "Y", "Z", "n"]
+        names += _SPIN_HALF
     names += [f"E{a}{b}" for a in range(dimension) for b in range(dimension)]
     return (*names, *(f"P{a}" for a in range(dimension)))
+
+
+def operator_hint(word: str, dimension: int) -> str:
+    """Why an operator that exists elsewhere does not exist for this dimension, else empty."""
+    if word in _SPIN_HALF:
+        return f"; {word} belongs to local dimension 2, not {dimension}: use Sx, Sy, Sz or P0"
+    if _UNIT.fullmatch(word) or _PROJECTOR.fullmatch(word):
+        return f"; the states of local dimension {dimension} are numbered 0 to {dimension - 1}"
+    return ""

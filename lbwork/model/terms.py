@@ -2,22 +2,22 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
 
 from lbwork.errors import ModelError
-from lbwork.model.expressions import LocalOperator, evaluate, nearest
-from lbwork.model.operators import known_operator_names, local_operator
+from lbwork.model.words import nearest, shown
 
-__all__ = ["Jump", "Number", "OperatorSource", "RandomOperator", "Term", "resolve_operator"]
+__all__ = ["Jump", "Number", "OperatorSource", "RandomOperator", "Term"]
 
 Number = float | complex | str
 """A number or an expression in the parameters (and ``j``, ``L`` where a place is known)."""
 
 MAX_MATRIX = 1024
+MAX_SEED = 2**63
+RANDOM_KINDS = ("hermitian", "ginibre")
 PLACES = ("all", "sites", "bonds", "triples", "first", "last")
 
 
@@ -27,36 +27,63 @@ class RandomOperator:
 
     Entries are independent Gaussians, scaled so that the squared Frobenius norm equals the matrix
     dimension. The same seed gives the same matrix. ``seed`` is a whole number >= 0 or an expression
-    in the parameters.
+    in the parameters. Raises ModelError.
     """
 
     kind: str
     range: int
-    seed: Number
+    seed: int | str
+    _place: str = field(default="random operator", repr=False, compare=False)
+
+    def __post_init__(self) -> None:
+        place = self._place
+        if not isinstance(self.kind, str) or self.kind not in RANDOM_KINDS:
+            hint = nearest(self.kind, RANDOM_KINDS) if isinstance(self.kind, str) else ""
+            raise ModelError(
+                f"{place}: random kind {shown(self.kind)} is not known{hint}; use hermitian or "
+                "ginibre"
+            )
+        if not _is_whole(self.range) or self.range not in (1, 2, 3):
+            raise ModelError(
+                f"{place}: random range {shown(self.range)} is not a whole number of sites up to "
+                "3; give 1, 2 or 3"
+            )
+        object.__setattr__(self, "range", int(self.range))
+        if isinstance(self.seed, str):
+            return
+        if not _is_whole(self.seed) or not 0 <= self.seed < MAX_SEED:
+            raise ModelError(
+                f"{place}: random seed {shown(self.seed)} is not one of 0, 1, 2, ...; give such a "
+                "number below 2**63 or an expression"
+            )
+        object.__setattr__(self, "seed", int(self.seed))
 
 
 OperatorSource = str | tuple[tuple[Number, ...], ...] | RandomOperator
+
+
+def _is_whole(value: Any) -> bool:
+    return isinstance(value, int | np.integer) and not isinstance(value, bool)
 
 
 def _freeze_number(value: Any, place: str) -> Number:
     if isinstance(value, str):
         return value
     if isinstance(value, bool | np.bool_):
-        raise ModelError(f"{place}: {value!r} is not a number; write 0 or 1")
+        raise ModelError(f"{place}: {shown(value)} is not a number; write 0 or 1")
     if isinstance(value, int | float | np.integer | np.floating):
         try:
             return float(value)
         except OverflowError:
-            raise ModelError(f"{place}: the number is too large; rescale the units") from None
+            raise ModelError(
+                f"{place}: {shown(value)} is too large a number; rescale the units"
+            ) from None
     if isinstance(value, complex | np.complexfloating):
         number = complex(value)
         return number.real if number.imag == 0 else number
-    raise ModelError(f"{place}: {_kind(value)} is not a number or an expression")
-
-
-def _kind(value: Any) -> str:
-    text = repr(value)
-    return text if len(text) <= 40 else f"a {type(value).__name__}"
+    raise ModelError(
+        f'{place}: {shown(value)} is neither a number nor an expression; write e.g. 0.5 or "2*g"'
+    )
 
 
 def _freeze_operator(value: Any, place: str) -> OperatorSource:
@@ -65,9 +92,14 @@ def _freeze_operator(value: Any, place: str) -> OperatorSource:
     if isinstance(value, np.ndarray):
         value = value.tolist()
     if not isinstance(value, list | tuple) or not value:
-        raise ModelError(f"{place}: {_kind(value)} is not an operator; write an expression or rows")
+        raise ModelError(
+            f"{place}: {shown(value)} is not an operator; write an expression or the rows of a "
+            "matrix"
+        )
     if len(value) > MAX_MATRIX:
-        raise ModelError(f"{place}: a matrix of {len(value)} rows is larger than {MAX_MATRIX}")
+        raise ModelError(
+            f"{place}: a matrix of {len(value)} rows is larger than {MAX_MATRIX}; use fewer sites"
+        )
     rows = []
     for index, row in enumerate(value, start=1):
         if not isinstance(row, list | tuple) or len(row) != len(value):
@@ -83,20 +115,30 @@ def _freeze_places(value: Any, place: str) -> str | tuple[int, ...]:
     if isinstance(value, str):
         if value not in PLACES:
             raise ModelError(
-                f"{place}: on = '{value}' is not a place{nearest(value, PLACES)}; "
+                f"{place}: on = {shown(value)} is not a place{nearest(value, PLACES)}; "
                 f"use one of {', '.join(PLACES)} or a list of site numbers"
             )
         return value
-    if isinstance(value, int) and not isinstance(value, bool):
+    if isinstance(value, np.ndarray):
+        value = value.tolist()
+    if _is_whole(value):
         value = [value]
-    if not isinstance(value, list | tuple) or not value:
-        raise ModelError(f"{place}: on = {_kind(value)} is not a place or a list of site numbers")
+    if not isinstance(value, list | tuple | range) or not value:
+        raise ModelError(
+            f"{place}: on = {shown(value)} is not a place; use one of {', '.join(PLACES)} or a "
+            "list of site numbers"
+        )
     for entry in value:
-        if isinstance(entry, bool) or not isinstance(entry, int | np.integer):
-            raise ModelError(f"{place}: site number {_kind(entry)} is not a whole number")
+        if not _is_whole(entry):
+            raise ModelError(
+                f"{place}: site number {shown(entry)} is not a whole number; sites are 1, 2, ... "
+                "without quotes"
+            )
     numbers = tuple(int(entry) for entry in value)
     if len(set(numbers)) != len(numbers):
-        raise ModelError(f"{place}: a site number is given twice in on = {list(numbers)}")
+        raise ModelError(
+            f"{place}: a site number is given twice in on = {shown(list(numbers))}; list each once"
+        )
     return numbers
 
 
@@ -105,7 +147,7 @@ def _freeze_coefficient(value: Any, place: str) -> Number | tuple[Number, ...]:
         value = value.tolist()
     if isinstance(value, list | tuple):
         if not value:
-            raise ModelError(f"{place}: the list of values is empty")
+            raise ModelError(f"{place}: the list of values is empty; give one value per place")
         return tuple(
             _freeze_number(entry, f"{place}, entry {index}")
             for index, entry in enumerate(value, start=1)
@@ -120,8 +162,8 @@ class Term:
     ``operator``: expression, square matrix (array or nested sequence, entries may be expressions)
     or :class:`RandomOperator`. ``on``: ``all`` places where it fits; ``sites``, ``bonds`` or
     ``triples`` (the same, checked against the operator's range); ``first``; ``last``; or 1-based
-    numbers of the operator's first site. ``coefficient``: number, expression (may use ``j`` and
-    ``L``) or one value per place.
+    numbers of the operator's first site. ``coefficient``: number, expression (may use ``j``, the
+    number of the operator's first site, and ``L``) or one value per place. Raises ModelError.
     """
 
     operator: OperatorSource
@@ -137,7 +179,8 @@ class Term:
 class Jump:
     """A jump operator ``coefficient * operator`` at the places ``on`` with ``rate`` >= 0.
 
-    The rate stands outside the operator: ``rate (l rho l^dag - 1/2 {l^dag l, rho})``.
+    The rate stands outside the operator: ``rate (l rho l^dag - 1/2 {l^dag l, rho})``; the other
+    fields are those of :class:`Term`. Raises ModelError.
     """
 
     operator: OperatorSource
@@ -158,74 +201,3 @@ def _freeze(item: Term | Jump) -> None:
     object.__setattr__(
         item, "coefficient", _freeze_coefficient(item.coefficient, f"{place}: coefficient")
     )
-
-
-def scalar(value: Number, names: Mapping[str, complex], place: str) -> complex:
-    """A number, or the value of an expression; raises ModelError when it is not a finite number."""
-    if isinstance(value, str):
-        result = evaluate(value, names, place=place)
-        if isinstance(result, LocalOperator):
-            raise ModelError(f"{place}: '{value}' is an operator where a number is needed")
-        return result
-    if not np.isfinite(value):
-        raise ModelError(f"{place}: {value} is not a finite number")
-    return complex(value)
-
-
-def resolve_operator(
-    source: OperatorSource, dimension: int, names: Mapping[str, complex], place: str
-) -> LocalOperator:
-    """The matrix of an operator source on its 1..3 sites; raises ModelError naming ``place``."""
-    if isinstance(source, RandomOperator):
-        return _random_operator(source, dimension, names, place)
-    if isinstance(source, str):
-        value = evaluate(
-            source,
-            names,
-            place=place,
-            operators=lambda name: local_operator(name, dimension),
-            known_operators=known_operator_names(dimension),
-        )
-        if not isinstance(value, LocalOperator):
-            raise ModelError(f"{place}: '{source}' is a number, not an operator; write e.g. '2 I'")
-        return value
-    matrix = np.array(
-        [
-            [
-                scalar(entry, names, f"{place}, matrix row {row} column {column}")
-                for column, entry in enumerate(entries, start=1)
-            ]
-            for row, entries in enumerate(source, start=1)
-        ]
-    )
-    for count in (1, 2, 3):
-        if matrix.shape[0] == dimension**count:
-            return LocalOperator(count, matrix)
-    sizes = ", ".join(str(dimension**count) for count in (1, 2, 3))
-    raise ModelError(
-        f"{place}: a matrix of size {matrix.shape[0]} does not act on 1, 2 or 3 sites of local "
-        f"dimension {dimension}; its size must be one of {sizes}"
-    )
-
-
-def _random_operator(
-    source: RandomOperator, dimension: int, names: Mapping[str, complex], place: str
-) -> LocalOperator:
-    if source.kind not in ("hermitian", "ginibre"):
-        raise ModelError(
-            f"{place}: random kind '{source.kind}' is not known"
-            f"{nearest(source.kind, ('hermitian', 'ginibre'))}; use hermitian or ginibre"
-        )
-    if source.range not in (1, 2, 3):
-        raise ModelError(f"{place}: random range {source.range} must be 1, 2 or 3 sites")
-    size = dimension**source.range
-    if size > MAX_MATRIX:
-        raise ModelError(f"{place}: a random matrix of size {size} is larger than {MAX_MATRIX}")
-    seed = scalar(source.seed, names, f"{place}: random seed")
-    if seed.imag or seed.real != round(seed.real) or not 0 <= seed.real < 2**63:
-        raise ModelError(f"{place}: random seed {source.seed} is not one of 0, 1, 2, ...")
-    generator = np.random.Generator(np.random.PCG64(round(seed.real)))
-    matrix = generator.normal(size=(size, size)) + 1j * generator.normal(size=(size, size))
-    if source.kind == "hermitian":
-        matrix = matrix + matrix.conj().T
-    return LocalOperator(source.range, matrix * np.sqrt(size) / np.linalg.norm(matrix))

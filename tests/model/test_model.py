@@ -1,4 +1,7 @@
-"""Identities of models: same physics, same identity; files round-trip; terms are what they say."""
+"""Models: terms are what they say, stand where they are put, and nothing changes afterwards."""
+
+import copy
+import pickle
 
 import numpy as np
 import pytest
@@ -9,17 +12,12 @@ from lbwork.model import (
     Model,
     RandomOperator,
     Term,
-    catalogue,
     load_model,
     local_operator,
-    model_from_toml,
-    model_to_toml,
 )
-from lbwork.model.canonical import on_site_basis
 
 X, Y, Z = (local_operator(name, 2) for name in "XYZ")
 ONE = np.eye(2)
-ENTRIES = {entry.name: entry for entry in catalogue()}
 
 
 def total_hamiltonian(model):
@@ -39,132 +37,6 @@ def test_expression_is_the_kronecker_sum():
     model = Model("a", 2, parameters={"delta": 0.7}, hamiltonian=(Term("X X + Y Y + delta Z Z"),))
     expected = np.kron(X, X) + np.kron(Y, Y) + 0.7 * np.kron(Z, Z)
     assert np.allclose(total_hamiltonian(model), expected)
-
-
-@pytest.mark.parametrize(
-    ("text", "expected"),
-    [
-        ("2 X", 2 * X),
-        ("-X + Z", Z - X),
-        ("0.5*(X + 1j*Y)", local_operator("S+", 2)),
-        ("S+", (X + 1j * Y) / 2),
-        ("Sx^2", 0.25 * ONE),
-        ("X.Y", 1j * Z),
-        ("exp(1j*pi/2) I", 1j * ONE),
-        ("E01", np.array([[0, 1], [0, 0]])),
-        ("P1", np.diag([0, 1])),
-        ("n", np.diag([1, 0])),
-        ("X/2 - X/4", X / 4),
-        ("sqrt(2)**2 Z", 2 * Z),
-    ],
-)
-def test_one_site_expressions(text, expected):
-    jump = Jump(text)
-    model = Model("a", 1, jumps=(jump,))
-    assert np.allclose(model.placed_jumps()[0].matrix, expected)
-
-
-@pytest.mark.parametrize("dimension", [2, 3, 4, 5])
-def test_spin_algebra(dimension):
-    """[Sx, Sy] = i Sz and S^2 = s (s + 1): definition of the representation."""
-    sx, sy, sz = (local_operator(name, dimension) for name in ("Sx", "Sy", "Sz"))
-    spin = (dimension - 1) / 2
-    assert np.allclose(sx @ sy - sy @ sx, 1j * sz)
-    assert np.allclose(sx @ sx + sy @ sy + sz @ sz, spin * (spin + 1) * np.eye(dimension))
-    assert sz[0, 0].real == spin
-
-
-@pytest.mark.parametrize("dimension", [2, 3, 4])
-def test_canonical_basis_is_orthonormal(dimension):
-    basis = on_site_basis(dimension)
-    overlaps = np.einsum("aij,bij->ab", basis.conj(), basis)
-    assert np.allclose(overlaps, dimension * np.eye(dimension**2))
-
-
-def reference():
-    return Model(
-        "a",
-        3,
-        hamiltonian=(Term("X X + Y Y"), Term("Z", coefficient=[0.1, 0.2, 0.3])),
-        jumps=(Jump("S-", rate=2.0),),
-    )
-
-
-def test_the_same_model_written_otherwise_has_the_same_identity():
-    other = Model(
-        "another name",
-        3,
-        parameters={"unused": 4},
-        hamiltonian=(
-            Term(np.kron(X, X) + 0.1 * np.kron(Z, ONE), on=[1]),
-            Term(np.kron(Y, Y), on=[2, 1]),
-            Term("X X + 0.2 Z I + 0.3 I Z + 5 I I", on=[2]),
-        ),
-        jumps=(
-            Jump("S-", on=[3], rate=1, coefficient=2**0.5 * 1j),
-            Jump([[0, 0], ["sqrt(2)", 0]], on=[2, 1]),
-            Jump("X", rate=0),
-        ),
-    )
-    assert other.identity == reference().identity
-    assert other != reference()
-
-
-def test_different_models_have_different_identities():
-    models = [
-        reference(),
-        Model("a", 3, hamiltonian=(Term("X X"),)),
-        Model("a", 3, boundary="periodic", hamiltonian=(Term("X X"),)),
-        Model("a", 4, hamiltonian=(Term("X X"),)),
-        Model("a", 3, hamiltonian=(Term("X X", coefficient=1.000001),)),
-        Model("a", 3, hamiltonian=(Term("X X"),), jumps=(Jump("S-"),)),
-        Model("a", 3, hamiltonian=(Term("X X"),), jumps=(Jump("S+"),)),
-        Model("a", 3, local_dimension=3, hamiltonian=(Term("Sx Sx"),)),
-    ]
-    assert len({model.identity for model in models}) == len(models)
-
-
-def test_one_and_one_point_zero_are_the_same_number():
-    whole = Model("a", 2, parameters={"g": 1}, jumps=(Jump("Z", rate="g"),))
-    point = Model("a", 2, parameters={"g": 1.0}, jumps=(Jump("Z", rate="g"),))
-    assert whole == point
-    assert hash(whole) == hash(point)
-    assert whole.identity == point.identity
-
-
-@pytest.mark.parametrize("name", ENTRIES)
-def test_catalogue_models_round_trip(name):
-    model = ENTRIES[name].model()
-    again = model_from_toml(model_to_toml(model))
-    assert again == model
-    assert again.identity == model.identity
-
-
-@pytest.mark.parametrize("name", ENTRIES)
-def test_catalogue_says_where_a_model_comes_from(name):
-    entry = ENTRIES[name]
-    assert any(character.isdigit() for character in entry.source)
-    assert entry.integrable in ("yes", "no", "unknown")
-    assert entry.argument and entry.known and entry.sensible_sites
-
-
-def test_catalogue_is_large_enough():
-    assert len(ENTRIES) >= 14
-
-
-def test_odd_values_round_trip():
-    model = Model(
-        'quotes " and \\ and \u00e9',
-        2,
-        description="two\nlines\ttab",
-        parameters={"z": 0.5 + 0.25j, "tiny": 1e-300},
-        hamiltonian=(Term([[1.5, "1j*tiny"], ["-1j*tiny", 0]], on=[2], coefficient=[0.1]),),
-        jumps=(
-            Jump(RandomOperator("ginibre", 2, 7), rate=[0.25]),
-            Jump([[0, 0.5 - 2j], [1, 0]], on="first", coefficient="z"),
-        ),
-    )
-    assert model_from_toml(model_to_toml(model)) == model
 
 
 def test_disorder_is_a_function_of_its_address():
@@ -213,13 +85,173 @@ def test_random_operator_is_seeded_and_normalised():
     assert np.linalg.norm(one) ** 2 == pytest.approx(4)
 
 
+def reference():
+    return Model(
+        "a",
+        3,
+        parameters={"g": 2.0, "phase": 0.5j},
+        hamiltonian=(Term("X X + Y Y"), Term("Z", coefficient=[0.1, 0.2, 0.3])),
+        jumps=(Jump("S-", rate="g", coefficient="exp(phase)"),),
+    )
+
+
 def test_models_are_frozen():
+    model = reference()
     with pytest.raises(AttributeError):
-        reference().sites = 4
+        model.sites = 4
     with pytest.raises(TypeError):
-        reference().parameters["x"] = 1
+        model.parameters["x"] = 1
+    with pytest.raises(ValueError, match="read-only"):
+        model.placed_hamiltonian()[0].matrix[0, 0] = 1
+    with pytest.raises(ValueError, match="read-only"):
+        model.placed_jumps()[0].matrix[0, 0] = 1
+
+
+@pytest.mark.parametrize(
+    "again", [copy.copy, copy.deepcopy, lambda m: pickle.loads(pickle.dumps(m))]
+)
+def test_models_can_be_copied_and_sent_to_other_processes(again):
+    model = reference()
+    assert again(model) == model
+    assert again(model).identity == model.identity
+    assert len({model, again(model)}) == 1
 
 
 def test_per_place_list_must_fit_the_new_size():
     with pytest.raises(ModelError, match="3 values for 4 places"):
         reference().replace(sites=4)
+
+
+def test_replace_knows_its_names():
+    changed = reference().replace(sites=3, boundary="open", name="b", g=3, phase=0)
+    assert (changed.name, changed.parameters["g"]) == ("b", 3)
+    assert isinstance(changed.parameters["phase"], float)
+    assert reference().replace(g="sqrt(16)").parameters["g"] == 4
+    with pytest.raises(ModelError, match="did you mean 'phase'"):
+        reference().replace(pahse=1)
+    with pytest.raises(ModelError, match="negative"):
+        reference().replace(g=-1)
+    with pytest.raises(ModelError, match="uses the parameter"):
+        reference().replace(g="2*phase")
+
+
+def test_coefficients_multiply_jumps_and_rates_stand_outside():
+    jump = Model("a", 1, jumps=(Jump("S-", rate=0.3, coefficient=2j),)).placed_jumps()[0]
+    assert jump.rate == 0.3
+    assert np.array_equal(jump.matrix, 2j * local_operator("S-", 2))
+
+
+def test_values_per_place():
+    model = Model(
+        "a",
+        4,
+        boundary="periodic",
+        hamiltonian=(Term("Z Z", coefficient="j + 10*L"), Term("X", on=[4, 2], coefficient=[5, 7])),
+        jumps=(Jump("Z", rate="j - 1"), Jump("X", on="last", rate=[2])),
+    )
+    hamiltonian = model.placed_hamiltonian()
+    assert [placed.matrix[0, 0].real for placed in hamiltonian[:4]] == [41, 42, 43, 44]
+    assert hamiltonian[3].sites == (3, 0)
+    assert [(p.sites, p.matrix[0, 1].real) for p in hamiltonian[4:]] == [((3,), 5), ((1,), 7)]
+    jumps = [(placed.sites, placed.rate) for placed in model.placed_jumps()]
+    assert jumps == [((1,), 1), ((2,), 2), ((3,), 3), ((3,), 2)]
+
+
+def test_hermiticity_is_asked_of_the_sum():
+    with pytest.raises(
+        ModelError, match=r"hamiltonian term 2, 3: not Hermitian on site\(s\) 1, 2 "
+    ):
+        Model("a", 3, hamiltonian=(Term("X X"), Term("S+ S-"), Term("2 S- S+")))
+    with pytest.raises(ModelError, match="constant"):
+        Model("a", 3, hamiltonian=(Term("1j I"),))
+    almost = Term([[1, 1e-15], [0, 1]])
+    assert Model("a", 1, hamiltonian=(almost,)).sites == 1
+
+
+WRONG = {
+    "hamiltonian is text": {"hamiltonian": "Z"},
+    "hamiltonian is a number": {"hamiltonian": 3},
+    "jump among terms": {"hamiltonian": (Jump("Z"),)},
+    "parameters is None": {"parameters": None},
+    "parameters is a list": {"parameters": [1]},
+    "parameter is an array": {"parameters": {"a": np.array([1, 2])}},
+    "parameter name is a number": {"parameters": {1: 1}},
+    "boundary is an array": {"boundary": np.array(["open"])},
+    "description is None": {"description": None},
+    "name with half a surrogate": {"name": "a\ud800"},
+    "description with half a surrogate": {"description": "\ud800"},
+    "sites is complex": {"sites": 3 + 0j},
+}
+
+
+@pytest.mark.parametrize("change", WRONG.values(), ids=WRONG)
+def test_wrong_types_in_python(change):
+    good = {"name": "a", "sites": 3, "jumps": (Jump("Z"),)}
+    with pytest.raises(ModelError) as caught:
+        Model(**(good | change))
+    assert str(caught.value).isprintable()
+
+
+@pytest.mark.parametrize(
+    "make",
+    [
+        lambda: Term(None),
+        lambda: Term([]),
+        lambda: Term(np.eye(2)[0]),
+        lambda: Term(np.zeros((2, 2, 2))),
+        lambda: Term([[1, 2], [3]]),
+        lambda: Term("Z", on=1.5),
+        lambda: Term("Z", on=[1.0]),
+        lambda: Term("Z", on=None),
+        lambda: Term("Z", coefficient=None),
+        lambda: Term("Z", coefficient=np.zeros((2, 2))),
+        lambda: Jump("Z", rate=np.bool_(True)),
+        lambda: RandomOperator("gue", 2, 1),
+        lambda: RandomOperator("ginibre", 2.0, 1),
+        lambda: RandomOperator("ginibre", 2, 1.5),
+        lambda: RandomOperator("ginibre", 2, 2**63),
+        lambda: RandomOperator(3, 2, 1),
+    ],
+)
+def test_wrong_terms_in_python(make):
+    with pytest.raises(ModelError):
+        make()
+
+
+def test_what_python_makes_easy():
+    """Generators, single terms, NumPy numbers, arrays and ranges are taken for what they mean."""
+    plain = Model("a", 3, hamiltonian=(Term("Z", coefficient=[1.0, 2.0, 3.0]),), jumps=(Jump("X"),))
+    easy = Model(
+        "a",
+        np.int64(3),
+        local_dimension=np.int8(2),
+        hamiltonian=(Term("Z", coefficient=np.arange(1, 4)) for _ in range(1)),
+        jumps=Jump("X", on=range(1, 4)),
+    )
+    assert easy.identity == plain.identity
+    assert hash(easy.replace(name="b")) != hash(easy)
+
+
+def test_an_integer_seed_keeps_all_its_digits():
+    one, two = (
+        Model("a", 2, jumps=(Jump(RandomOperator("ginibre", 1, seed)),))
+        for seed in (2**60, 2**60 + 1)
+    )
+    assert one.identity != two.identity
+
+
+def test_huge_operators_are_refused_before_they_are_built():
+    big = Term(RandomOperator("hermitian", 3, 1))
+    with pytest.raises(ModelError, match="4000000 entries"):
+        Model("a", 20, local_dimension=10, hamiltonian=(big,))
+
+
+@pytest.mark.parametrize("dimension", [2, 4])
+def test_long_chains_are_cheap(dimension):
+    text = "Sx Sx + Sy Sy + 0.3 Sz Sz"
+    model = Model(
+        "a", 64, dimension, "periodic", hamiltonian=(Term(text),), jumps=(Jump("S-"), Jump("Sz"))
+    )
+    assert len(model.placed_hamiltonian()) == 64
+    assert len({id(placed.matrix) for placed in model.placed_hamiltonian()}) == 1
+    assert len(model.identity) == 64
