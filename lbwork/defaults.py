@@ -69,6 +69,9 @@ LEVEL_UNFOLDING_MINIMUM: Final = 300
 LEVEL_CLASS_CONFLICT: Final = 2.0
 """Log-likelihood by which ratios may prefer another class before they decide alone."""
 
+LEVEL_CONFLICT_SHARE: Final = 0.1
+"""Share of levels with another sure verdict above which sequences are not pooled."""
+
 LEVEL_EXPECTED_WEIGHT: Final = 4.0
 """Prior weight of the class that symmetry asks for, where ratios alone decide."""
 

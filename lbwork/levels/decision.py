@@ -43,7 +43,8 @@ class Agreement:
     """Whether pooled sequences follow one ensemble.
 
     probability: of their scatter, if they do. levels: reference levels behind each sure verdict.
-    conflict: sure verdicts differ and the scatter is no accident, so that pooling them is void.
+    conflict: a fair share of the levels has another sure verdict and the scatter is no accident, so
+    that pooling them is void; a smaller share is named but does not stop the verdict.
     disagreeing: labels of the sequences whose sure verdict is another than most levels have.
     """
 
@@ -99,9 +100,11 @@ def agreement(
     for verdict in sure:
         levels[verdict.verdict] = levels.get(verdict.verdict, 0) + verdict.levels_used
     leading = max(levels, key=lambda name: levels[name]) if levels else UNDECIDED
+    minority = 1 - levels.get(leading, 0) / max(sum(levels.values()), 1)
     return Agreement(
         probability=probability,
         levels=levels,
-        conflict=len(levels) > 1 and probability < defaults.LEVEL_SCATTER_MINIMUM,
+        conflict=minority > defaults.LEVEL_CONFLICT_SHARE
+        and probability < defaults.LEVEL_SCATTER_MINIMUM,
         disagreeing=tuple(one.label for one in sure if one.verdict != leading),
     )
