@@ -1,115 +1,36 @@
 """Matrix-free application of a generator to a density matrix, threads over blocks of rows.
 
 ``L(rho) = A rho + rho A^dag + sum_k l_k rho l_k^dag`` with sparse ``A`` and ``l_k`` of dimension
-``D = d**L`` (rates absorbed). Everything diagonal is one factor per element,
-``W_ij = A_ii + A_jj* + sum_k l_k(i) l_k(j)*``, kept as one D x D array (real where possible). With
-the off-diagonal part of A written as ``x + i y`` the two products are
+``D = d**L`` (rates absorbed). With ``A = diag(a) + x + i y`` and the diagonal jumps in G,
 
-    ``A rho + rho A^dag = (x rho + rho x^T) + i (y rho - rho y^T)``,
+    ``L(rho)_ij = (a_i + a_j* + G_ij) rho_ij + (x rho + rho x^T)_ij + i (y rho - rho y^T)_ij``
 
-so that every inner loop multiplies a run of doubles by one real number: rows of rho on the left, a
-transposed tile of a few rows on the right. Besides input and output only W, row buffers and
-D x D-sparse operators are held, never a matrix of dimension ``D**2``.
+plus the off-diagonal jumps, so that every inner loop multiplies contiguous doubles by one real
+number: rows of rho from the left, runs within a row that stays in the first-level cache from the
+right. Besides input and output only G, one row per block in work and D x D-sparse operators are
+held, never a matrix of dimension ``D**2``.
+
+The kernel has one signature for all models; it is compiled at the first call (seconds) and kept on
+disk, so that importing costs nothing.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numba
 import numpy as np
-import scipy.sparse as sparse
 
-__all__ = ["ActionTables", "action_tables", "apply_tables"]
+from lbwork.generator.tables import ActionTables
 
+__all__ = ["apply_tables"]
 
-TILE = 4
+BLOCK = 8
+"""Rows that one task of the thread pool works on."""
 
-
-@dataclass(frozen=True, eq=False)
-class ActionTables:
-    """Flat arrays that the compiled kernel reads.
-
-    ``real`` and ``imaginary``: csr arrays (pointers, columns, values) of x and y; ``weights``: W,
-    float64 or complex128 (D, D); ``jumps``: csr arrays of the off-diagonal jumps, stacked;
-    ``entries``: the same jumps as (row, column, conjugated value) lists with ``entry_pointers``
-    (K + 1,).
-    """
-
-    dimension: int
-    real: tuple[np.ndarray, np.ndarray, np.ndarray]
-    imaginary: tuple[np.ndarray, np.ndarray, np.ndarray]
-    weights: np.ndarray
-    jumps: tuple[np.ndarray, np.ndarray, np.ndarray]
-    entries: tuple[np.ndarray, np.ndarray, np.ndarray]
-    entry_pointers: np.ndarray
+FAST = {"nsz", "contract", "reassoc"}
+"""Sums may be reordered and fused; infinities and NaN keep their meaning."""
 
 
-def _real_if_possible(values: np.ndarray) -> np.ndarray:
-    """Float64 when no imaginary part is there: the kernel is compiled for both."""
-    kept = values.real if np.iscomplexobj(values) and not np.any(values.imag) else values
-    return np.ascontiguousarray(kept)
-
-
-def _csr_arrays(matrix: sparse.csr_matrix) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    matrix.eliminate_zeros()
-    return (
-        matrix.indptr.astype(np.int64),
-        matrix.indices.astype(np.int32),
-        _real_if_possible(matrix.data),
-    )
-
-
-def _weights(diagonal: np.ndarray, factors: list[np.ndarray]) -> np.ndarray:
-    """W, real when every entry is."""
-    real = bool(
-        np.all([np.all(factor.imag == 0) for factor in factors]) and np.all(diagonal.imag == 0)
-    )
-    if real:
-        weights = diagonal.real[:, None] + diagonal.real[None, :]
-        table = np.array([factor.real for factor in factors]).reshape(len(factors), diagonal.size)
-    else:
-        weights = diagonal[:, None] + diagonal.conj()[None, :]
-        table = np.array(factors, dtype=complex).reshape(len(factors), diagonal.size)
-    weights += table.T @ table.conj()
-    return np.ascontiguousarray(weights)
-
-
-def action_tables(a: sparse.csr_matrix, jumps: list[sparse.csr_matrix]) -> ActionTables:
-    """Prepare the tables from ``A`` and the jump operators (rates absorbed), all (D, D)."""
-    dimension = a.shape[0]
-    diagonal = np.ascontiguousarray(a.diagonal(), dtype=np.complex128)
-    left = (a - sparse.diags_array(diagonal, format="csr")).tocsr()
-    left.eliminate_zeros()
-    factors, others = [], []
-    for jump in jumps:
-        values = jump.diagonal()
-        if jump.nnz == np.count_nonzero(values):
-            factors.append(values)
-        else:
-            others.append(jump.tocsr())
-    empty = sparse.csr_matrix((0, dimension), dtype=complex)
-    stacked = sparse.vstack(others, format="csr") if others else empty
-    lists = [jump.tocoo() for jump in others]
-    joined = (
-        np.concatenate([item.row for item in lists] or [np.zeros(0)]).astype(np.int32),
-        np.concatenate([item.col for item in lists] or [np.zeros(0)]).astype(np.int32),
-        _real_if_possible(np.concatenate([item.data.conj() for item in lists] or [np.zeros(0)])),
-    )
-    pointers = np.cumsum([0, *(item.nnz for item in lists)]).astype(np.int64)
-    weights = _weights(diagonal, factors)
-    return ActionTables(
-        dimension,
-        _csr_arrays(left.real.tocsr()),
-        _csr_arrays(left.imag.tocsr()),
-        weights,
-        _csr_arrays(stacked),
-        joined,
-        pointers,
-    )
-
-
-@numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
+@numba.njit(cache=True, fastmath=FAST)
 def _add_rows(i, rho, pointer, column, value, total):  # pragma: no cover
     """``total += sum_k value[i, k] rho[k]`` on doubles, four rows at a time."""
     position, last = pointer[i], pointer[i + 1]
@@ -133,99 +54,121 @@ def _add_rows(i, rho, pointer, column, value, total):  # pragma: no cover
             total[j] += a * first[j]
 
 
-@numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
-def _add_columns(tile, pointer, column, value, sign, total):  # pragma: no cover
-    """``total[b] += sign * (rho M^T)[b]`` for the rows b whose transpose is in ``tile``."""
-    sums = np.empty(2 * TILE)
-    for j in range(tile.shape[0]):
-        sums[:] = 0.0
-        for position in range(pointer[j], pointer[j + 1]):
-            factor = sign * value[position]
-            source = tile[column[position]]
-            for b in range(2 * TILE):
-                sums[b] += factor * source[b]
-        for b in range(total.shape[0]):
-            total[b, 2 * j] += sums[2 * b]
-            total[b, 2 * j + 1] += sums[2 * b + 1]
+@numba.njit(cache=True, fastmath=FAST)
+def _add_piece(total, target, source, origin, length, factor):  # pragma: no cover
+    """``total[target + t] += factor source[origin + t]``; offsets and length count doubles."""
+    into, of = total[target : target + length], source[origin : origin + length]
+    for j in range(into.size):
+        into[j] += factor.real * of[j]
+    if factor.imag != 0.0:
+        for j in range(0, into.size, 2):
+            into[j] -= factor.imag * of[j + 1]
+            into[j + 1] += factor.imag * of[j]
 
 
-@numba.njit(cache=True, fastmath={"nsz", "contract", "reassoc"})
-def _add_jumps(i, rho, row, j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr):  # pragma: no cover
+@numba.njit(cache=True, fastmath=FAST)
+def _add_runs(source, places, values, bound, factor, total):  # pragma: no cover
+    """``total += factor source M^T`` for one row ``source`` and the runs of M, real or complex."""
+    # Unsigned places spare the test for negative indices at every access.
+    one = np.uint64(1)
+    for run in range(bound[0], bound[1]):
+        scale = factor * values[run]
+        target, origin = np.uint64(places[run, 0]), np.uint64(places[run, 1])
+        re, im = source[origin], source[origin + one]
+        total[target] += scale.real * re
+        total[target + one] += scale.real * im
+        if scale.imag != 0.0:
+            total[target] -= scale.imag * im
+            total[target + one] += scale.imag * re
+    for run in range(bound[1], bound[2]):
+        target, origin = np.uint64(places[run, 0]), np.uint64(places[run, 1])
+        length = np.uint64(places[run, 2])
+        _add_piece(total, target, source, origin, length, factor * values[run])
+
+
+@numba.njit(cache=True, fastmath=FAST)
+def _add_jumps(
+    i, rho, pointer, column, value, places, values, bounds, spare, total
+):  # pragma: no cover
+    """``total += sum_k (l_k rho l_k^dag)[i]`` over the off-diagonal jumps; ``spare`` is a row."""
     dimension = rho.shape[0]
-    for k in range(e_ptr.size - 1):
-        for position in range(j_ptr[k * dimension + i], j_ptr[k * dimension + i + 1]):
-            value = j_val[position]
-            other = rho[j_col[position]]
-            for entry in range(e_ptr[k], e_ptr[k + 1]):
-                row[e_row[entry]] += value * e_val[entry] * other[e_col[entry]]
+    zero, whole = np.uint64(0), np.uint64(rho.shape[1])
+    for k in range(bounds.shape[0]):
+        first, last = pointer[k * dimension + i], pointer[k * dimension + i + 1]
+        if last - first == 1:
+            _add_runs(rho[column[first]], places, values, bounds[k], value[first], total)
+        elif last > first:
+            spare[:] = 0.0
+            for position in range(first, last):
+                _add_piece(spare, zero, rho[column[position]], zero, whole, value[position])
+            _add_runs(spare, places, values, bounds[k], 1.0, total)
 
 
-@numba.njit(parallel=True, cache=True, fastmath={"nsz", "contract", "reassoc"})
+@numba.njit(cache=True, fastmath=FAST)
+def _weigh(row, diagonal, own, factor_real, factor_imaginary, turned, total):  # pragma: no cover
+    """``total = (a_i + a_j* + G_ij) row_j + i turned_j`` with ``own = a_i``."""
+    for j in range(diagonal.size):
+        re = own.real + diagonal[j].real
+        im = own.imag - diagonal[j].imag
+        total[2 * j] = re * row[2 * j] - im * row[2 * j + 1] - turned[2 * j + 1]
+        total[2 * j + 1] = re * row[2 * j + 1] + im * row[2 * j] + turned[2 * j]
+    for j in range(factor_real.size):
+        total[2 * j] += factor_real[j] * row[2 * j]
+        total[2 * j + 1] += factor_real[j] * row[2 * j + 1]
+    for j in range(factor_imaginary.size):
+        total[2 * j] -= factor_imaginary[j] * row[2 * j + 1]
+        total[2 * j + 1] += factor_imaginary[j] * row[2 * j]
+
+
+@numba.njit(parallel=True, cache=True, fastmath=FAST)
 def _apply(
     rho,
-    doubles,
     out,
+    diagonal,
     x_ptr,
     x_col,
     x_val,
     y_ptr,
     y_col,
     y_val,
-    weights,
     j_ptr,
     j_col,
     j_val,
-    e_row,
-    e_col,
-    e_val,
-    e_ptr,
+    p_places,
+    p_values,
+    p_bounds,
+    j_places,
+    j_values,
+    j_bounds,
+    g_real,
+    g_imag,
 ):  # pragma: no cover
+    """The kernel on doubles: ``rho`` and ``out`` are float64 (D, 2 D) views."""
     dimension = rho.shape[0]
-    for block in numba.prange((dimension + TILE - 1) // TILE):
-        first = block * TILE
-        height = min(TILE, dimension - first)
-        tile = np.zeros((dimension, 2 * TILE))
-        for b in range(height):
-            for j in range(dimension):
-                tile[j, 2 * b] = doubles[first + b, 2 * j]
-                tile[j, 2 * b + 1] = doubles[first + b, 2 * j + 1]
-        turned = np.zeros((height, 2 * dimension))
-        mixed = x_val.size > 0
-        straight = np.zeros((height if mixed else 1, 2 * dimension))
-        for b in range(height):
-            _add_rows(first + b, doubles, y_ptr, y_col, y_val, turned[b])
-        _add_columns(tile, y_ptr, y_col, y_val, -1.0, turned)
-        if mixed:
-            for b in range(height):
-                _add_rows(first + b, doubles, x_ptr, x_col, x_val, straight[b])
-            _add_columns(tile, x_ptr, x_col, x_val, 1.0, straight)
-        for b in range(height):
-            i = first + b
-            for j in range(dimension):
-                rotated = complex(-turned[b, 2 * j + 1], turned[b, 2 * j])
-                out[i, j] = weights[i, j] * rho[i, j] + rotated
-            if mixed:
-                for j in range(dimension):
-                    out[i, j] += complex(straight[b, 2 * j], straight[b, 2 * j + 1])
-            _add_jumps(i, rho, out[i], j_ptr, j_col, j_val, e_row, e_col, e_val, e_ptr)
+    for block in numba.prange((dimension + BLOCK - 1) // BLOCK):
+        spare = np.empty(2 * dimension)
+        for i in range(block * BLOCK, min((block + 1) * BLOCK, dimension)):
+            row, total = rho[i], out[i]
+            spare[:] = 0.0
+            _add_rows(i, rho, y_ptr, y_col, y_val, spare)
+            _add_runs(row, p_places, p_values, p_bounds[1], -1.0, spare)
+            _weigh(row, diagonal, diagonal[i], g_real[i], g_imag[i], spare, total)
+            _add_rows(i, rho, x_ptr, x_col, x_val, total)
+            _add_runs(row, p_places, p_values, p_bounds[0], 1.0, total)
+            _add_jumps(i, rho, j_ptr, j_col, j_val, j_places, j_values, j_bounds, spare, total)
 
 
 def apply_tables(
     tables: ActionTables, rho: np.ndarray, out: np.ndarray | None = None
 ) -> np.ndarray:
-    """``A rho + rho A^dag + sum l rho l^dag``; ``rho`` and the result are complex128 (D, D)."""
+    """``A rho + rho A^dag + sum l rho l^dag``; ``rho`` and the result are complex128 (D, D).
+
+    ``rho`` may be any numeric array and is copied when it is not C-contiguous complex128; ``out``
+    must be that already, of the same shape, and share no memory with ``rho``: the kernel does not
+    check.
+    """
     rho = np.ascontiguousarray(rho, dtype=np.complex128)
     if out is None:
         out = np.empty_like(rho)
-    _apply(
-        rho,
-        rho.view(np.float64),
-        out,
-        *tables.real,
-        *tables.imaginary,
-        tables.weights,
-        *tables.jumps,
-        *tables.entries,
-        tables.entry_pointers,
-    )
+    _apply(rho.view(np.float64), out.view(np.float64), *tables.arrays())
     return out

@@ -5,12 +5,14 @@ from __future__ import annotations
 from functools import cached_property
 
 import numpy as np
+import numpy.typing as npt
 import scipy.sparse as sparse
 
-from lbwork.errors import CapacityError, ModelError
-from lbwork.generator.action import ActionTables, action_tables, apply_tables
+from lbwork.errors import CapacityError, ModelError, UsageError
+from lbwork.generator.action import apply_tables
 from lbwork.generator.certificates import GeneratorCertificate, certify_generator
 from lbwork.generator.embedding import embed
+from lbwork.generator.tables import ActionTables, action_tables
 from lbwork.generator.terms import superoperator_terms
 from lbwork.model import Model
 from lbwork.provenance import usable_memory
@@ -62,24 +64,34 @@ class Lindbladian:
         """``sqrt(g_k) l_k`` for every jump, csr (D, D)."""
         return [jump.copy() for jump in self._jumps]
 
-    def effective_hamiltonian(self) -> sparse.csr_matrix:
-        """``Heff = H - i/2 sum_k g_k l_k^dag l_k``, csr (D, D)."""
-        total = self.hamiltonian()
+    @cached_property
+    def _effective_hamiltonian(self) -> sparse.csr_matrix:
+        total = self._hamiltonian
         for jump in self.model.placed_jumps():
             decay = jump.matrix.conj().T @ jump.matrix
             total = total - 0.5j * jump.rate * self._embedded(jump.sites, decay)
         return total.tocsr()
 
+    def effective_hamiltonian(self) -> sparse.csr_matrix:
+        """``Heff = H - i/2 sum_k g_k l_k^dag l_k``, csr (D, D)."""
+        return self._effective_hamiltonian.copy()
+
     @cached_property
     def _forward(self) -> ActionTables:
-        return action_tables((-1j * self.effective_hamiltonian()).tocsr(), self._jumps)
+        return action_tables((-1j * self._effective_hamiltonian).tocsr(), self._jumps)
 
     @cached_property
     def _backward(self) -> ActionTables:
-        adjoint = (1j * self.effective_hamiltonian().conj().T).tocsr()
+        adjoint = (1j * self._effective_hamiltonian.conj().T).tocsr()
         return action_tables(adjoint, [jump.conj().T.tocsr() for jump in self._jumps])
 
-    def _checked(self, matrix: np.ndarray) -> np.ndarray:
+    @property
+    def action_bytes(self) -> int:
+        """Bytes of the tables behind :meth:`apply`, besides its input and output."""
+        return self._forward.nbytes
+
+    def _checked(self, values: npt.ArrayLike) -> np.ndarray:
+        matrix = np.asarray(values)
         if matrix.shape != (self.dimension, self.dimension):
             raise ModelError(
                 f"an array of shape {matrix.shape} is not an operator of this chain; it must "
@@ -87,28 +99,53 @@ class Lindbladian:
             )
         return matrix
 
-    def apply(self, rho: np.ndarray, out: np.ndarray | None = None) -> np.ndarray:
-        """``L(rho)`` without forming L; any complex (D, D) array, Hermitian or not.
+    def _run(self, tables: ActionTables, matrix: np.ndarray, out: np.ndarray | None) -> np.ndarray:
+        # The compiled kernel trusts its arguments: a short ``out`` would be overrun, one that
+        # overlaps the input would be read after it was written.
+        if out is not None:
+            legal = out.dtype == np.complex128 and out.flags.c_contiguous and out.flags.writeable
+            if not legal or out.shape != matrix.shape:
+                raise UsageError(
+                    f"out is {out.dtype} of shape {out.shape}; it must be a writable C-contiguous "
+                    f"complex128 array of shape {matrix.shape}, or be left out"
+                )
+            if np.may_share_memory(out, matrix):
+                raise UsageError(
+                    "out shares memory with the operator that the generator is applied to; give "
+                    "another array, or leave it out"
+                )
+        return apply_tables(tables, matrix, out)
 
-        ``out`` may be a C-contiguous complex128 (D, D) array that takes the result.
+    def apply(self, rho: npt.ArrayLike, out: np.ndarray | None = None) -> np.ndarray:
+        """``L(rho)`` without forming L; any numeric (D, D) array, Hermitian or not.
+
+        ``rho`` is copied when it is not C-contiguous complex128. ``out`` may be a C-contiguous
+        complex128 (D, D) array, apart from ``rho``, that takes the result; UsageError otherwise.
+        CapacityError when the tables of the diagonal jumps do not fit in memory.
         """
-        return apply_tables(self._forward, self._checked(rho), out)
+        checked = self._checked(rho)
+        return self._run(self._forward, checked, out)
 
-    def apply_adjoint(self, operator: np.ndarray, out: np.ndarray | None = None) -> np.ndarray:
-        """``L^dag(X) = i[H, X] + sum_k g_k (l_k^dag X l_k - 1/2 {l_k^dag l_k, X})``."""
-        return apply_tables(self._backward, self._checked(operator), out)
+    def apply_adjoint(self, operator: npt.ArrayLike, out: np.ndarray | None = None) -> np.ndarray:
+        """``L^dag(X) = i[H, X] + sum_k g_k (l_k^dag X l_k - 1/2 {l_k^dag l_k, X})``.
 
-    def jump_part(self, rho: np.ndarray) -> np.ndarray:
+        Arguments and errors are those of :meth:`apply`.
+        """
+        checked = self._checked(operator)
+        return self._run(self._backward, checked, out)
+
+    def jump_part(self, rho: npt.ArrayLike) -> np.ndarray:
         """``sum_k g_k l_k rho l_k^dag``, complex (D, D)."""
-        result = np.zeros_like(self._checked(rho), dtype=complex)
+        matrix = self._checked(rho)
+        result = np.zeros(matrix.shape, dtype=complex)
         for jump in self._jumps:
-            result += (jump.conj() @ (jump @ rho).T).T
+            result += (jump.conj() @ (jump @ matrix).T).T
         return result
 
-    def no_jump_part(self, rho: np.ndarray) -> np.ndarray:
+    def no_jump_part(self, rho: npt.ArrayLike) -> np.ndarray:
         """``-i (Heff rho - rho Heff^dag)``, complex (D, D)."""
-        heff = self.effective_hamiltonian()
-        return np.asarray(-1j * (heff @ self._checked(rho) - (heff.conj() @ rho.T).T))
+        matrix, heff = self._checked(rho), self._effective_hamiltonian
+        return np.asarray(-1j * (heff @ matrix - (heff.conj() @ matrix.T).T))
 
     def matrix(self) -> sparse.csr_matrix:
         """L as csr (D**2, D**2) on row-major ``vec(rho)``, index ket * D + bra.
