@@ -14,10 +14,10 @@ import numpy as np
 import scipy.sparse as sparse
 from scipy.linalg import lapack
 from scipy.sparse.linalg import splu
-from threadpoolctl import threadpool_limits
 
 from lbwork import defaults
 from lbwork.errors import CapacityError
+from lbwork.provenance import limited_threads
 from lbwork.spectrum.rightmost import require_decay, rightmost_levels
 from lbwork.symmetry import SectorBlock
 
@@ -147,7 +147,7 @@ def sector_kernel(
             f"sector '{block.sector.label}': {size} states are above the limit of "
             f"{defaults.GAP_ITERATIVE_DIMENSION} of the zero-mode search; use fewer sites"
         )
-    with threadpool_limits(limits=defaults.DENSE_THREADS):
+    with limited_threads(defaults.DENSE_THREADS):
         if filtered and irreducible and size > defaults.FILTER_SMALLEST_DIMENSION:
             right, separation = _filtered_side(matrix, tolerance, 2, block.sector.label)
 

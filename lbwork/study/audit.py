@@ -105,7 +105,7 @@ def _attempt(part: str, refused: dict[str, str], work: Callable[[], Any]) -> Any
 
 
 def audit(
-    model: Model,
+    model: Model | SectorPlan,
     *,
     store: RunStore | None = None,
     fresh: bool = False,
@@ -113,11 +113,14 @@ def audit(
 ) -> Audit:
     """Spectrum, level statistics and verdict, gap and steady state of a model, in one run.
 
+    ``model`` may be a plan already made, so that the symmetry search runs once.
+
     ``progress(done, total, what)`` counts sectors and then parts. With a store the run is kept
     sector by sector and an interrupted audit is taken up again. Raises what the spectrum raises;
     gap and steady state that cannot be certified are recorded in ``refused``.
     """
-    plan = plan_sectors(model)
+    plan = plan_sectors(model) if isinstance(model, Model) else model
+    model = plan.model
     options = SpectrumOptions()
     total = len(plan.sectors) + 3
 
@@ -129,7 +132,7 @@ def audit(
         spectrum = full_spectrum(
             plan, options=options, progress=lambda done, _, sector: tell(done, sector.label)
         )
-        return _finish(model, plan, spectrum, tell, None)
+        return _finish(plan, spectrum, tell, None)
     document = {
         "spectrum": options.to_dict(),
         "levels": {"seed": LevelOptions().seed},
@@ -145,7 +148,7 @@ def audit(
             options=options,
             progress=lambda done, _, sector: tell(done, sector.label),
         )
-        result = _finish(model, plan, spectrum, tell, writer.run_id)
+        result = _finish(plan, spectrum, tell, writer.run_id)
         writer.write_result("generator", result.generator.to_dict(), {})
         writer.write_result("levels", result.levels_document(), {})
         if result.gap is not None:
@@ -159,7 +162,6 @@ def audit(
 
 
 def _finish(
-    model: Model,
     plan: SectorPlan,
     spectrum: Spectrum,
     tell: Callable[[float, str], None],
@@ -171,14 +173,14 @@ def _finish(
     statistics = level_statistics(level_sequences(spectrum))
     verdict = judge_levels(statistics)
     tell(count + 1, "gap")
-    gap = _attempt("gap", refused, lambda: spectral_gap(model))
+    gap = _attempt("gap", refused, lambda: spectral_gap(plan))
     tell(count + 2, "steady state")
-    steady = _attempt("steady state", refused, lambda: steady_state(model))
+    steady = _attempt("steady state", refused, lambda: steady_state(plan))
     tell(count + 3, "done")
     return Audit(
-        model=model,
+        model=plan.model,
         plan=plan,
-        generator=Lindbladian(model).certificate(),
+        generator=Lindbladian(plan.model).certificate(),
         spectrum=spectrum,
         statistics=statistics,
         verdict=verdict,

@@ -189,12 +189,6 @@ def _clean(vectors: np.ndarray) -> np.ndarray:
     return np.asarray(rows[:pivot_row].T)
 
 
-def is_diagonal(element: np.ndarray) -> bool:
-    """True when every sublattice's matrix of a generator is diagonal."""
-    off = element - np.einsum("sab,ab->sab", element, np.eye(element.shape[-1]))
-    return bool(np.abs(off).max() < 1e-10)
-
-
 def diagonal_rank(elements: Sequence[np.ndarray] | np.ndarray) -> int:
     """Dimension of the diagonal subspace of a span of generators."""
     stacked = np.asarray(elements)

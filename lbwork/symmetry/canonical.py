@@ -15,7 +15,14 @@ import numpy as np
 
 from lbwork.generator import SuperTerm
 
-__all__ = ["CanonicalTerms", "canonical_terms", "local_digits", "permute_sites", "terms_norm"]
+__all__ = [
+    "CanonicalTerms",
+    "canonical_terms",
+    "local_digits",
+    "permute_sites",
+    "sublattice_count",
+    "terms_norm",
+]
 
 CanonicalTerms = Mapping[tuple[int, ...], np.ndarray]
 """Support (sorted 0-based sites) -> complex128 matrix of shape (q**k, q**k), q = d**2."""
@@ -99,6 +106,11 @@ def canonical_terms(terms: Iterable[SuperTerm], base: int) -> dict[tuple[int, ..
         for support, matrix in sorted(total.items())
         if np.abs(matrix).max() > NEGLIGIBLE * scale
     }
+
+
+def sublattice_count(sites: int, ring: bool) -> int:
+    """How many sublattices (odd, even sites) a chain has: 1 for one site or an odd ring, else 2."""
+    return 1 if sites == 1 or (ring and sites % 2) else 2
 
 
 def terms_norm(terms: CanonicalTerms) -> float:

@@ -14,7 +14,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from lbwork.symmetry.canonical import CanonicalTerms, local_digits
+from lbwork.symmetry.canonical import CanonicalTerms, local_digits, sublattice_count
 from lbwork.symmetry.integer_lattice import quotient_group
 
 __all__ = ["Charge", "ChargeLabel", "charge_sectors", "find_charges", "label_text", "labels_of"]
@@ -124,7 +124,7 @@ def find_charges(
     is completed with charges read off the Smith normal form, so that together they are complete.
     """
     base = dimension**2
-    sublattices = 1 if sites == 1 or (ring and sites % 2) else 2
+    sublattices = sublattice_count(sites, ring)
     rows = _transition_rows(terms, base, sublattices)
     group = quotient_group(rows)
     transform = np.zeros((sublattices, base, len(group.moduli)), dtype=np.int64)

@@ -10,18 +10,19 @@ from __future__ import annotations
 
 import itertools
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from lbwork import defaults
-from lbwork.symmetry.canonical import CanonicalTerms, local_digits
+from lbwork.symmetry.canonical import CanonicalTerms, local_digits, sublattice_count
 from lbwork.symmetry.monomials import (
     MonomialMap,
     compose,
     identity_map,
     image_of_term,
     images_agree,
+    inverse,
     on_site_map,
     reflection_map,
     translation_map,
@@ -104,6 +105,7 @@ def _solve_signs(
     width = sublattices * base
     scale = max(float(np.abs(matrix).max()) for matrix in terms.values())
     tolerance = 1e-10 * scale
+    back = inverse(replace(operation, antilinear=False))
     equations: set[bytes] = set()
     for support, matrix in terms.items():
         place, image = image_of_term(operation, support, matrix, signed=False)
@@ -114,9 +116,8 @@ def _solve_signs(
         if np.abs(np.abs(image) - np.abs(target)).max() > tolerance:
             return None
         # Work in the digits before the map, where the unknown signs live.
-        back_place, wanted = image_of_term(_undo(operation), place, target, signed=False)
+        _, wanted = image_of_term(back, place, target, signed=False)
         source = matrix.conj() if operation.antilinear else matrix
-        del back_place
         present = np.abs(source) > tolerance
         same = np.abs(wanted - source) <= tolerance
         opposite = np.abs(wanted + source) <= tolerance
@@ -138,13 +139,6 @@ def _solve_signs(
         return None
     bits = solution.reshape(sublattices, base)[np.arange(sites) % sublattices]
     return (1 - 2 * bits.astype(np.int8)).astype(np.int8)
-
-
-def _undo(operation: MonomialMap) -> MonomialMap:
-    sites = operation.sites
-    site_map = np.argsort(operation.site_map)
-    digit_map = np.argsort(operation.digit_map, axis=1)[site_map]
-    return MonomialMap(site_map, digit_map, np.ones((sites, digit_map.shape[1]), dtype=np.int8))
 
 
 def _solve_modulo_two(equations: np.ndarray, width: int) -> np.ndarray | None:
@@ -175,24 +169,9 @@ def _signed(
     if signs is None:
         return None
     candidate = MonomialMap(operation.site_map, operation.digit_map, signs, operation.antilinear)
-    target = {place: matrix.T for place, matrix in terms.items()} if transpose else terms
-    residual = _mismatch(candidate, terms, target)
+    target = {place: matrix.T for place, matrix in terms.items()} if transpose else None
+    residual = images_agree(candidate, terms, defaults.SYMMETRY_TOLERANCE, target)
     return (candidate, residual) if residual <= defaults.SYMMETRY_TOLERANCE else None
-
-
-def _mismatch(operation: MonomialMap, terms: CanonicalTerms, target: CanonicalTerms) -> float:
-    if target is terms:
-        return images_agree(operation, terms, defaults.SYMMETRY_TOLERANCE)
-    scale = max(float(np.linalg.norm(matrix)) for matrix in terms.values())
-    worst = 0.0
-    for support, matrix in terms.items():
-        place, image = image_of_term(operation, support, matrix)
-        worst = max(worst, float(np.linalg.norm(image - target[place])) / scale)
-    return worst
-
-
-def _sublattices(sites: int, ring: bool) -> int:
-    return 1 if sites == 1 or (ring and sites % 2) else 2
 
 
 def find_translation(terms: CanonicalTerms, sites: int, base: int) -> DiscreteSymmetry | None:
@@ -201,7 +180,7 @@ def find_translation(terms: CanonicalTerms, sites: int, base: int) -> DiscreteSy
         if sites % step:
             continue
         plain = translation_map(sites, base, step)
-        found = _signed(plain, terms, 1 if sites % 2 else 2, transpose=False)
+        found = _signed(plain, terms, sublattice_count(sites, True), transpose=False)
         if found is not None:
             operation, residual = found
             word = "translation" if step == 1 else f"translation by {step} sites"
@@ -228,7 +207,7 @@ def find_point_symmetries(
     base = dimension**2
     if not terms:
         return ()
-    sublattices = _sublattices(sites, ring)
+    sublattices = sublattice_count(sites, ring)
     permutations = _digit_permutations(dimension)
     patterns = [(name, (image, image)) for name, image in permutations]
     if sublattices == 2 and dimension == 2:

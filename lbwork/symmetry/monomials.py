@@ -8,7 +8,6 @@ this form; followed by complex conjugation it is antilinear.
 
 from __future__ import annotations
 
-from collections.abc import Iterable
 from dataclasses import dataclass
 
 import numpy as np
@@ -128,14 +127,6 @@ def power(operation: MonomialMap, exponent: int) -> MonomialMap:
     return result
 
 
-def product(operations: Iterable[MonomialMap], sites: int, base: int) -> MonomialMap:
-    """The operations applied one after the other, first one first."""
-    result = identity_map(sites, base)
-    for operation in operations:
-        result = compose(operation, result)
-    return result
-
-
 def image_of_term(
     operation: MonomialMap, support: tuple[int, ...], matrix: np.ndarray, *, signed: bool = True
 ) -> tuple[tuple[int, ...], np.ndarray]:
@@ -161,16 +152,23 @@ def image_of_term(
     return tuple(int(site) for site in places[order]), permute_sites(moved, base, order)
 
 
-def images_agree(operation: MonomialMap, terms: CanonicalTerms, tolerance: float) -> float:
-    """Largest ``||S M_A S^-1 - M_S(A)||`` over the supports, relative to the largest ``||M||``.
+def images_agree(
+    operation: MonomialMap,
+    terms: CanonicalTerms,
+    tolerance: float,
+    target: CanonicalTerms | None = None,
+) -> float:
+    """Largest ``||S M_A S^-1 - T_S(A)||`` over the supports, relative to the largest ``||M||``.
 
-    Stops at the first support where it exceeds ``tolerance`` and returns that value.
+    ``target`` T is the generator itself unless given. Stops at the first support where the mismatch
+    exceeds ``tolerance`` and returns that value.
     """
+    wanted = terms if target is None else target
     scale = max((float(np.linalg.norm(matrix)) for matrix in terms.values()), default=1.0)
     worst = 0.0
     for support, matrix in terms.items():
         place, image = image_of_term(operation, support, matrix)
-        other = terms.get(place)
+        other = wanted.get(place)
         difference = image if other is None else image - other
         worst = max(worst, float(np.linalg.norm(difference)) / scale)
         if worst > tolerance:

@@ -13,12 +13,11 @@ from lbwork.errors import SymmetryError
 from lbwork.generator import superoperator_terms
 from lbwork.model import Model
 from lbwork.symmetry.algebra import (
-    GeneratorAlgebra,
     commuting_generators,
     ket_generators,
 )
 from lbwork.symmetry.block import LocalRows, local_rows
-from lbwork.symmetry.canonical import CanonicalTerms, canonical_terms
+from lbwork.symmetry.canonical import CanonicalTerms, canonical_terms, sublattice_count
 from lbwork.symmetry.charges import Charge, find_charges
 from lbwork.symmetry.discrete import (
     DiscreteSymmetry,
@@ -121,7 +120,7 @@ def find_symmetries(model: Model) -> SymmetryReport:
     base = dimension**2
     sites = model.sites
     terms = canonical_terms(superoperator_terms(model), base)
-    sublattices = 1 if sites == 1 or (ring and sites % 2) else 2
+    sublattices = sublattice_count(sites, ring)
     weak = commuting_generators(terms, ket_generators(dimension), sublattices=sublattices)
     rotation = None
     if weak is not None and terms:
@@ -151,14 +150,4 @@ def find_symmetries(model: Model) -> SymmetryReport:
         ),
         hermiticity=DiscreteSymmetry("Hermiticity", hermiticity, residual),
         unresolved=unresolved_symmetries(terms, charges, weak, dimension, sublattices),
-    )
-
-
-def weak_algebra(model: Model) -> GeneratorAlgebra | None:
-    """All weak on-site symmetry generators of a model in the basis it is written in."""
-    terms = canonical_terms(superoperator_terms(model), model.local_dimension**2)
-    odd_ring = model.boundary == "periodic" and model.sites % 2
-    sublattices = 1 if model.sites == 1 or odd_ring else 2
-    return commuting_generators(
-        terms, ket_generators(model.local_dimension), sublattices=sublattices
     )

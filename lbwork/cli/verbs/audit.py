@@ -71,7 +71,7 @@ def run(
     store = RunStore(runs)
     with progress("audit", len(plan.sectors) + 3) as tell:
         result = audit(
-            chosen, store=store, fresh=fresh, progress=lambda done, _, what: tell(done, what)
+            plan, store=store, fresh=fresh, progress=lambda done, _, what: tell(done, what)
         )
     paths = _figures(store, str(result.run_id))
     if json:
