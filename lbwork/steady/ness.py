@@ -11,8 +11,8 @@ from lbwork.errors import CapacityError, NotCertifiedError
 from lbwork.generator import Lindbladian
 from lbwork.model import Model
 from lbwork.steady.branches import mixed_limit, steady_branches
-from lbwork.steady.currents import continuity_error, spin_currents
-from lbwork.steady.observables import (
+from lbwork.observables.currents import continuity_error, spin_currents
+from lbwork.observables.local import (
     magnetisation_profile,
     spectrum_quantities,
     zz_correlations,

@@ -6,8 +6,8 @@ import pytest
 from lbwork.generator import Lindbladian
 from lbwork.model import Jump, Model, Term
 from lbwork.steady import steady_state
-from lbwork.steady.currents import continuity_error, spin_currents
-from lbwork.steady.observables import (
+from lbwork.observables.currents import continuity_error, spin_currents
+from lbwork.observables.local import (
     magnetisation_profile,
     reduced_density,
     spectrum_quantities,

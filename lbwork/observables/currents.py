@@ -16,7 +16,7 @@ import numpy as np
 from lbwork import defaults
 from lbwork.generator import Lindbladian
 from lbwork.model import Model
-from lbwork.steady.observables import local_magnetisation, reduced_density
+from lbwork.observables.local import local_magnetisation, reduced_density
 
 __all__ = ["Currents", "continuity_error", "spin_currents"]
 
