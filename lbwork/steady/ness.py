@@ -10,13 +10,13 @@ from lbwork import defaults
 from lbwork.errors import CapacityError, NotCertifiedError
 from lbwork.generator import Lindbladian
 from lbwork.model import Model
-from lbwork.steady.branches import mixed_limit, steady_branches
 from lbwork.observables.currents import continuity_error, spin_currents
 from lbwork.observables.local import (
     magnetisation_profile,
     spectrum_quantities,
     zz_correlations,
 )
+from lbwork.steady.branches import mixed_limit, steady_branches
 from lbwork.steady.records import SteadyBranch, SteadyOptions, SteadyState
 from lbwork.steady.space import as_matrix
 from lbwork.steady.zero_modes import SectorZeroModes, ZeroModes, zero_modes

@@ -5,7 +5,6 @@ import pytest
 
 from lbwork.generator import Lindbladian
 from lbwork.model import Jump, Model, Term
-from lbwork.steady import steady_state
 from lbwork.observables.currents import continuity_error, spin_currents
 from lbwork.observables.local import (
     magnetisation_profile,
@@ -13,6 +12,7 @@ from lbwork.observables.local import (
     spectrum_quantities,
     zz_correlations,
 )
+from lbwork.steady import steady_state
 from tests.chains import driven_chain, embed
 
 
