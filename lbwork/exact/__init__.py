@@ -18,15 +18,43 @@ from lbwork.exact.exclusion_symmetric import (
     symmetric_profile,
     symmetric_ring_gap,
 )
+from lbwork.exact.occupation import (
+    Move,
+    OccupationProcess,
+    configurations,
+    exclusion_process,
+    markov_generator,
+    occupation_process,
+    occupations,
+)
+from lbwork.exact.occupation_spectra import (
+    ProcessGap,
+    ProcessState,
+    growth_rate,
+    process_gap,
+    stationary_process,
+)
 
 __all__ = [
     "ExclusionPhase",
+    "Move",
+    "OccupationProcess",
+    "ProcessGap",
+    "ProcessState",
     "asymmetric_ring_eigenvalue",
+    "configurations",
     "exclusion_current",
     "exclusion_phase",
+    "exclusion_process",
     "exclusion_profile",
+    "growth_rate",
     "log_partition",
+    "markov_generator",
+    "occupation_process",
+    "occupations",
     "omega_coefficients",
+    "process_gap",
+    "stationary_process",
     "symmetric_cumulants",
     "symmetric_current",
     "symmetric_gap",
