@@ -1,5 +1,12 @@
 """Closed-form and polynomial-cost references that share no code with the solvers they check."""
 
+from lbwork.exact.driven_xx import DrivenXX, driven_xx_of, driven_xx_state
+from lbwork.exact.driven_xxz import (
+    DrivenXXZ,
+    driven_xxz_density,
+    driven_xxz_of,
+    driven_xxz_state,
+)
 from lbwork.exact.exclusion import (
     ExclusionPhase,
     exclusion_current,
@@ -36,6 +43,8 @@ from lbwork.exact.occupation_spectra import (
 )
 
 __all__ = [
+    "DrivenXX",
+    "DrivenXXZ",
     "ExclusionPhase",
     "Move",
     "OccupationProcess",
@@ -43,6 +52,11 @@ __all__ = [
     "ProcessState",
     "asymmetric_ring_eigenvalue",
     "configurations",
+    "driven_xx_of",
+    "driven_xx_state",
+    "driven_xxz_density",
+    "driven_xxz_of",
+    "driven_xxz_state",
     "exclusion_current",
     "exclusion_phase",
     "exclusion_process",
