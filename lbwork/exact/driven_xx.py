@@ -1,8 +1,8 @@
 """The XX chain with dephasing, driven at its ends: the steady state in closed form.
 
-``H = J sum_j (X_j X_{j+1} + Y_j Y_{j+1}) + h sum_j Z_j``; jumps ``S+`` and ``S-`` on the first site at
-rates ``G_1 (1 +- m_1)/2`` and on the last site at rates ``G_L (1 +- m_L)/2``, so that each end pulls
-``<Z>`` to m, and ``Z_j`` at rate g_j. The two-point function is closed (M. Žnidarič, J. Stat. Mech.
+``H = J sum_j (X_j X_{j+1} + Y_j Y_{j+1}) + h sum_j Z_j``; jumps ``S+`` and ``S-`` on the first site
+at rates ``G_1 (1 +- m_1)/2`` and on the last site at rates ``G_L (1 +- m_L)/2``, so that each end
+pulls ``<Z>`` to m, and ``Z_j`` at rate g_j. The two-point function is closed (M. Žnidarič, J. Stat. Mech.
 L05002 (2010), arXiv:1005.1271). With J = 1 its only non-zero entries are the profile and the equal
 current on all bonds, j = 2 I:
 
@@ -33,8 +33,8 @@ __all__ = ["DrivenXX", "driven_xx_of", "driven_xx_state"]
 class DrivenXX:
     """Steady state of the driven XX chain.
 
-    magnetisation (L,): ``<Z_j>``. current: of Z, to the right, the same on every bond. Together they
-    are all one- and two-point functions ``c_i^dag c_j`` of the Jordan-Wigner fermions.
+    magnetisation (L,): ``<Z_j>``. current: of Z, to the right, the same on every bond. They
+    determine all two-point functions ``<c_i^dag c_j>`` of the Jordan-Wigner fermions.
     """
 
     magnetisation: npt.NDArray[np.float64]
@@ -50,7 +50,7 @@ def driven_xx_state(
 ) -> DrivenXX:
     """Profile and current in closed form, for any length.
 
-    drives: ``(G_1, G_L)`` > 0. targets: ``(m_1, m_L)`` in [-1, 1]; ``(mu, -mu)`` is the usual drive.
+    drives: ``(G_1, G_L)`` > 0. targets: ``(m_1, m_L)`` in [-1, 1], usually ``(mu, -mu)``.
     dephasing: g >= 0, one number or one per site (L,). coupling: J, not 0. Needs two or more sites;
     raises ModelError. Žnidarič (2010).
     """
@@ -78,17 +78,17 @@ def driven_xx_state(
 def driven_xx_of(model: Model) -> DrivenXX:
     """The same for a model.
 
-    Needs an open spin-1/2 chain of two or more sites with uniform ``J (X X + Y Y)`` and field, jumps
-    ``S+`` and ``S-`` on the first and on the last site (at least one at each) and any ``Z`` jumps.
-    Raises ModelError with the reason otherwise.
+    Needs an open spin-1/2 chain of two or more sites with uniform ``J (X X + Y Y)`` and field,
+    jumps ``S+`` and ``S-`` on the first and on the last site (at least one at each) and any ``Z``
+    jumps. Raises ModelError with the reason otherwise.
     """
     need = "the driven XX chain"
     chain = plain_chain(model, need)
     couplings = np.concatenate([chain.xx, chain.yy])
     if not uniform(couplings) or not couplings.any() or not uniform(chain.field) or chain.zz.any():
         raise ModelError(
-            f"model '{model.name}' is not uniform J (XX + YY) with a uniform field; {need} in closed "
-            "form needs that"
+            f"model '{model.name}' is not uniform J (XX + YY) with a uniform field; {need} in "
+            "closed form needs that"
         )
     if chain.raising[1:-1].any() or chain.lowering[1:-1].any():
         raise ModelError(f"model '{model.name}' gains or loses inside; {need} does so at its ends")

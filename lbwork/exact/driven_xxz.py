@@ -1,17 +1,19 @@
 """The XXZ chain at maximal boundary drive: its steady state as a matrix product.
 
-``H = sum_j (X_j X_{j+1} + Y_j Y_{j+1} + Delta Z_j Z_{j+1})`` with jumps ``S+`` on the first and ``S-``
-on the last site, both at rate G. T. Prosen, Phys. Rev. Lett. 107, 137201 (2011); D. Karevski,
-V. Popkov, G. Schütz, Phys. Rev. Lett. 110, 047201 (2013). The state is ``Omega Omega^dag / tr`` with
+``H = sum_j (X_j X_{j+1} + Y_j Y_{j+1} + Delta Z_j Z_{j+1})`` with jumps ``S+`` on the first and
+``S-`` on the last site, both at rate G. T. Prosen, Phys. Rev. Lett. 107, 137201 (2011); D. Karevski,
+V. Popkov, G. Schütz, Phys. Rev. Lett. 110, 047201 (2013). The state is ``Omega Omega^dag`` over its
+trace, with
 
     Omega_ab = <0| prod_j M_{a_j b_j} |0>,   C_k = T_k(Delta),  U_k = sin(k eta)/sin(eta),
     M_00 = M_11 = diag(s C_k - U_k),         Delta = cos(eta),  s = 4i/G,
     (M_01)_{k,k+1} = -U_{k+1},   (M_10)_{k+1,k} = 2 s C_k - (1 - (1 - Delta^2) s^2) U_k,
 
-for every real Delta: the entries are polynomials in Delta (this form derived from the q-deformed Lax
-operator, which gives the published one at Delta = 1, and checked against dense steady states).
-The trace needs equal levels of ket and bra only, and no level above L/2 is reached, so that a chain
-of L sites costs L^2. All terms are positive and kept as logarithms, since they overflow for |Delta|>1.
+for every real Delta: the entries are polynomials in Delta (this form derived from the q-deformed
+Lax operator, from memory; at Delta = 1 it is the published one, and it was checked against dense
+steady states). The trace needs equal levels of ket and bra only, and no level above L/2 is reached,
+so that a chain of L sites costs L^2. All terms are positive and kept as logarithms, since they
+overflow for |Delta| > 1.
 """
 
 from __future__ import annotations
@@ -38,7 +40,7 @@ class DrivenXXZ:
     """Steady state of the maximally driven XXZ chain.
 
     magnetisation (L,): ``<Z_j>``. current: of Z, to the right, the same on every bond; its relative
-    error is rounding, however small it is, and log_current is its logarithm, which cannot underflow.
+    error is rounding, however small it is. log_current: logarithm of its size, never underflows.
     log_norms (L+1,): ``log Z_n`` of chains of n = 0..L sites, ``current = 32/G Z_{L-1}/Z_L``.
     """
 
@@ -137,15 +139,15 @@ def driven_xxz_of(model: Model) -> DrivenXXZ:
 
     Needs an open spin-1/2 chain with uniform couplings ``a (X X + Y Y) + b Z Z`` (a not 0, any
     uniform field, which does nothing), ``S+`` at one end and ``S-`` at the other with equal rates.
-    Here ``Delta = b/|a|``, since a rotation of every second spin takes a to -a, and ``G = rate/|a|``.
+    Here ``Delta = b/|a|``, since turning every second spin takes a to -a, and ``G = rate/|a|``.
     Raises ModelError with the reason, CapacityError.
     """
     chain = plain_chain(model, "the maximally driven XXZ chain")
     couplings = np.concatenate([chain.xx, chain.yy])
     if not all(map(uniform, (couplings, chain.zz, chain.field))) or not couplings.any():
         raise ModelError(
-            f"model '{model.name}' is not a uniform chain a (XX + YY) + b ZZ with a != 0; the matrix "
-            "product needs equal couplings on two or more sites"
+            f"model '{model.name}' is not a uniform chain a (XX + YY) + b ZZ with a != 0; the "
+            "matrix product needs equal couplings on two or more sites"
         )
     ends = [chain.raising[0], chain.lowering[-1]], [chain.lowering[0], chain.raising[-1]]
     total = chain.raising.sum() + chain.lowering.sum() + chain.dephasing.sum()
@@ -160,8 +162,8 @@ def driven_xxz_of(model: Model) -> DrivenXXZ:
                 log_current=state.log_current + float(np.log(size)),
             )
     raise ModelError(
-        f"model '{model.name}' is not driven by S+ at one end and S- at the other alone, with equal "
-        "rates; the matrix product holds for maximal drive only"
+        f"model '{model.name}' is not driven by S+ at one end and S- at the other alone, with "
+        "equal rates; the matrix product holds for maximal drive only"
     )
 
 
