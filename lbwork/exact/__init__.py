@@ -25,6 +25,7 @@ from lbwork.exact.exclusion_symmetric import (
     symmetric_profile,
     symmetric_ring_gap,
 )
+from lbwork.exact.majorana import QuadraticChain, boundary_driven_chain, quadratic_chain
 from lbwork.exact.occupation import (
     Move,
     OccupationProcess,
@@ -41,6 +42,21 @@ from lbwork.exact.occupation_spectra import (
     process_gap,
     stationary_process,
 )
+from lbwork.exact.quadratic import (
+    QuadraticState,
+    evolved_covariance,
+    hamiltonian_currents,
+    product_covariance,
+    quadratic_profile,
+    quadratic_state,
+    rapidities,
+)
+from lbwork.exact.quadratic_spectrum import (
+    QuadraticGap,
+    QuadraticLevels,
+    quadratic_gap,
+    quadratic_levels,
+)
 
 __all__ = [
     "DrivenXX",
@@ -50,24 +66,38 @@ __all__ = [
     "OccupationProcess",
     "ProcessGap",
     "ProcessState",
+    "QuadraticChain",
+    "QuadraticGap",
+    "QuadraticLevels",
+    "QuadraticState",
     "asymmetric_ring_eigenvalue",
+    "boundary_driven_chain",
     "configurations",
     "driven_xx_of",
     "driven_xx_state",
     "driven_xxz_density",
     "driven_xxz_of",
     "driven_xxz_state",
+    "evolved_covariance",
     "exclusion_current",
     "exclusion_phase",
     "exclusion_process",
     "exclusion_profile",
     "growth_rate",
+    "hamiltonian_currents",
     "log_partition",
     "markov_generator",
     "occupation_process",
     "occupations",
     "omega_coefficients",
     "process_gap",
+    "product_covariance",
+    "quadratic_chain",
+    "quadratic_gap",
+    "quadratic_levels",
+    "quadratic_profile",
+    "quadratic_state",
+    "rapidities",
     "stationary_process",
     "symmetric_cumulants",
     "symmetric_current",

@@ -2,9 +2,9 @@
 
 ``H = J sum_j (X_j X_{j+1} + Y_j Y_{j+1}) + h sum_j Z_j``; jumps ``S+`` and ``S-`` on the first site
 at rates ``G_1 (1 +- m_1)/2`` and on the last site at rates ``G_L (1 +- m_L)/2``, so that each end
-pulls ``<Z>`` to m, and ``Z_j`` at rate g_j. The two-point function is closed (M. Žnidarič, J. Stat. Mech.
-L05002 (2010), arXiv:1005.1271). With J = 1 its only non-zero entries are the profile and the equal
-current on all bonds, j = 2 I:
+pulls ``<Z>`` to m, and ``Z_j`` at rate g_j. The two-point function is closed (M. Žnidarič, J. Stat.
+Mech. L05002 (2010), arXiv:1005.1271). With J = 1 its only non-zero entries are the profile and the
+equal current on all bonds, j = 2 I:
 
     I = (m_1 - m_L) / (2/G_1 + 2/G_L + (G_1 + G_L)/8 + sum_bonds (g_j + g_{j+1})/2),
     <Z_1> = m_1 - 2 I/G_1,

@@ -1,9 +1,9 @@
 """The XXZ chain at maximal boundary drive: its steady state as a matrix product.
 
 ``H = sum_j (X_j X_{j+1} + Y_j Y_{j+1} + Delta Z_j Z_{j+1})`` with jumps ``S+`` on the first and
-``S-`` on the last site, both at rate G. T. Prosen, Phys. Rev. Lett. 107, 137201 (2011); D. Karevski,
-V. Popkov, G. Schütz, Phys. Rev. Lett. 110, 047201 (2013). The state is ``Omega Omega^dag`` over its
-trace, with
+``S-`` on the last site, both at rate G. T. Prosen, Phys. Rev. Lett. 107, 137201 (2011); D.
+Karevski, V. Popkov, G. Schütz, Phys. Rev. Lett. 110, 047201 (2013). The state is
+``Omega Omega^dag`` over its trace, with
 
     Omega_ab = <0| prod_j M_{a_j b_j} |0>,   C_k = T_k(Delta),  U_k = sin(k eta)/sin(eta),
     M_00 = M_11 = diag(s C_k - U_k),         Delta = cos(eta),  s = 4i/G,
