@@ -173,9 +173,9 @@ def _jump_reason(string: PauliString, degree: int, count: int) -> str:
             "the two-point function alone is closed)"
         )
     return (
-        f"{what} inside a chain of {count} sites carries the string of Z over all sites to its left, "
-        "which makes correlations across it of fourth order; linear jumps act at the first or at "
-        "the last site"
+        f"{what} inside a chain of {count} sites carries the string of Z over all sites to its "
+        "left, which makes correlations across it of fourth order; linear jumps act at the first "
+        "or at the last site"
     )
 
 
@@ -210,8 +210,8 @@ def boundary_driven_chain(
     ends = []
     for site, rates in ((0, first), (count - 1, last)):
         jumps = np.zeros((2, 2 * count), dtype=complex)
-        for row, (rate, sign) in enumerate(zip(rates, (1j, -1j), strict=True)):
+        for index, (rate, phase) in enumerate(zip(rates, (1j, -1j), strict=True)):
             strength = np.sqrt(checked_rate("rate", rate, zero=True)) / 2
-            jumps[row, 2 * site : 2 * site + 2] = strength * np.array([1, sign])
+            jumps[index, 2 * site : 2 * site + 2] = strength * np.array([1, phase])
         ends.append(jumps)
     return QuadraticChain(count, matrix, ends[0], ends[1])
