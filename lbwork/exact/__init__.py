@@ -1,6 +1,17 @@
 """Closed-form and polynomial-cost references that share no code with the solvers they check."""
 
-from lbwork.exact.driven_xx import DrivenXX, driven_xx_of, driven_xx_state
+from lbwork.exact.dephasing import (
+    NoisyState,
+    RelaxationGap,
+    noisy_state,
+    relaxation_gap,
+    relaxation_levels,
+)
+from lbwork.exact.driven_xx import (
+    DrivenXX,
+    driven_xx_of,
+    driven_xx_state,
+)
 from lbwork.exact.driven_xxz import (
     DrivenXXZ,
     driven_xxz_density,
@@ -15,8 +26,12 @@ from lbwork.exact.exclusion import (
     log_partition,
     unit_rate_profile,
 )
-from lbwork.exact.exclusion_counting import unit_rate_cumulants
-from lbwork.exact.exclusion_ring import asymmetric_ring_eigenvalue
+from lbwork.exact.exclusion_counting import (
+    unit_rate_cumulants,
+)
+from lbwork.exact.exclusion_ring import (
+    asymmetric_ring_eigenvalue,
+)
 from lbwork.exact.exclusion_symmetric import (
     omega_coefficients,
     symmetric_cumulants,
@@ -25,7 +40,16 @@ from lbwork.exact.exclusion_symmetric import (
     symmetric_profile,
     symmetric_ring_gap,
 )
-from lbwork.exact.majorana import QuadraticChain, boundary_driven_chain, quadratic_chain
+from lbwork.exact.majorana import (
+    QuadraticChain,
+    boundary_driven_chain,
+    quadratic_chain,
+)
+from lbwork.exact.noise import (
+    NoisyChain,
+    dephased,
+    noisy_chain,
+)
 from lbwork.exact.occupation import (
     Move,
     OccupationProcess,
@@ -63,6 +87,8 @@ __all__ = [
     "DrivenXXZ",
     "ExclusionPhase",
     "Move",
+    "NoisyChain",
+    "NoisyState",
     "OccupationProcess",
     "ProcessGap",
     "ProcessState",
@@ -70,9 +96,11 @@ __all__ = [
     "QuadraticGap",
     "QuadraticLevels",
     "QuadraticState",
+    "RelaxationGap",
     "asymmetric_ring_eigenvalue",
     "boundary_driven_chain",
     "configurations",
+    "dephased",
     "driven_xx_of",
     "driven_xx_state",
     "driven_xxz_density",
@@ -87,6 +115,8 @@ __all__ = [
     "hamiltonian_currents",
     "log_partition",
     "markov_generator",
+    "noisy_chain",
+    "noisy_state",
     "occupation_process",
     "occupations",
     "omega_coefficients",
@@ -98,6 +128,8 @@ __all__ = [
     "quadratic_profile",
     "quadratic_state",
     "rapidities",
+    "relaxation_gap",
+    "relaxation_levels",
     "stationary_process",
     "symmetric_cumulants",
     "symmetric_current",

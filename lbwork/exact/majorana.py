@@ -26,6 +26,7 @@ import numpy.typing as npt
 
 from lbwork.errors import ModelError
 from lbwork.exact.arguments import checked_count, checked_rate
+from lbwork.exact.jordan_wigner import Monomial, add_bilinear, monomial, parity
 from lbwork.exact.pauli import (
     PauliString,
     hamiltonian_strings,
@@ -35,7 +36,13 @@ from lbwork.exact.pauli import (
 )
 from lbwork.model import Model
 
-__all__ = ["QuadraticChain", "boundary_driven_chain", "quadratic_chain"]
+__all__ = [
+    "QuadraticChain",
+    "boundary_driven_chain",
+    "hamiltonian_form",
+    "linear_jump",
+    "quadratic_chain",
+]
 
 MAX_SITES = 4000
 
@@ -67,42 +74,6 @@ class QuadraticChain:
         return np.asarray(4 * self.bath().imag)
 
 
-@dataclass(frozen=True)
-class _Monomial:
-    """``phase`` times the product of the w in ``mask`` (bit m for w_{m+1}) in ascending order."""
-
-    mask: int
-    phase: complex
-
-    def times(self, other: _Monomial) -> _Monomial:
-        swaps, rest = 0, other.mask
-        while rest:
-            low = rest & -rest
-            # Every factor of self that stands above it has to be passed.
-            swaps += (self.mask & ~(2 * low - 1)).bit_count()
-            rest ^= low
-        sign = -1 if swaps % 2 else 1
-        return _Monomial(self.mask ^ other.mask, sign * self.phase * other.phase)
-
-
-def _letter(site: int, letter: str) -> _Monomial:
-    if letter == "Z":
-        return _Monomial(3 << 2 * site, -1j)
-    string = _Monomial((1 << 2 * site) - 1, (-1j) ** site)
-    return string.times(_Monomial((1 if letter == "X" else 2) << 2 * site, 1))
-
-
-def _monomial(string: PauliString) -> _Monomial:
-    result = _Monomial(0, 1)
-    for site, letter in string:
-        result = result.times(_letter(site, letter))
-    return result
-
-
-def _parity(sites: int) -> _Monomial:
-    return _Monomial((1 << 2 * sites) - 1, (-1j) ** sites)
-
-
 def quadratic_chain(model: Model) -> QuadraticChain:
     """The matrices of a quadratic model.
 
@@ -111,23 +82,10 @@ def quadratic_chain(model: Model) -> QuadraticChain:
     """
     require_open_spin_half(model, "a quadratic chain")
     count = model.sites
-    matrix = np.zeros((2 * count, 2 * count))
-    for string, value in hamiltonian_strings(model).items():
-        monomial = _monomial(string)
-        degree = monomial.mask.bit_count()
-        if degree != 2:
-            raise ModelError(
-                f"model '{model.name}' is not quadratic: the Hamiltonian term "
-                f"{shown_string(string)} is a product of {degree} fermion operators"
-            )
-        low = (monomial.mask & -monomial.mask).bit_length() - 1
-        high = monomial.mask.bit_length() - 1
-        # value phase w_low w_high = (i/4) (A_lh w_l w_h + A_hl w_h w_l).
-        matrix[low, high] = (-2j * value * monomial.phase).real
-        matrix[high, low] = -matrix[low, high]
+    matrix = hamiltonian_form(model)
     jumps: dict[str, list[np.ndarray]] = {"left": [], "right": []}
     for rate, strings in jump_strings(model):
-        kind, vector = _linear_jump(model, strings)
+        kind, vector = linear_jump(model, strings)
         jumps[kind].append(np.sqrt(rate) * vector)
     left, right = (
         np.array(jumps[kind], dtype=complex).reshape(-1, 2 * count) for kind in ("left", "right")
@@ -135,25 +93,43 @@ def quadratic_chain(model: Model) -> QuadraticChain:
     return QuadraticChain(count, matrix, left, right)
 
 
-def _linear_jump(model: Model, strings: dict[PauliString, complex]) -> tuple[str, np.ndarray]:
-    """``left`` or ``right`` and the coefficients l_m, complex (2L,)."""
+def hamiltonian_form(model: Model) -> npt.NDArray[np.float64]:
+    """A of ``H = (i/4) sum A_mn w_m w_n``, real antisymmetric (2L, 2L).
+
+    Raises ModelError for a term that is not a product of two fermion operators.
+    """
+    matrix = np.zeros((2 * model.sites,) * 2, dtype=complex)
+    for string, value in hamiltonian_strings(model).items():
+        product = monomial(string)
+        if product.degree != 2:
+            raise ModelError(
+                f"model '{model.name}' is not quadratic: the Hamiltonian term "
+                f"{shown_string(string)} is a product of {product.degree} fermion operators"
+            )
+        add_bilinear(matrix, value, product)
+    return np.asarray(matrix.real)
+
+
+def linear_jump(model: Model, strings: dict[PauliString, complex]) -> tuple[str, np.ndarray]:
+    """``left`` or ``right`` and the coefficients l_m of one jump, complex (2L,).
+
+    Raises ModelError with the reason when the jump is not linear.
+    """
     count = model.sites
-    parity = _parity(count)
+    whole = parity(count)
     vectors = {"left": np.zeros(2 * count, complex), "right": np.zeros(2 * count, complex)}
     for string, value in strings.items():
-        monomial = _monomial(string)
-        degree = monomial.mask.bit_count()
-        if degree == 1:
-            place = monomial.mask.bit_length() - 1
-            vectors["left"][place] += value * monomial.phase
-        elif degree == 2 * count - 1:
-            place = (monomial.mask ^ parity.mask).bit_length() - 1
-            single = _Monomial(1 << place, 1).times(parity)
-            vectors["right"][place] += value * monomial.phase / single.phase
+        product = monomial(string)
+        if product.degree == 1:
+            place = product.mask.bit_length() - 1
+            vectors["left"][place] += value * product.phase
+        elif product.degree == 2 * count - 1:
+            place = (product.mask ^ whole.mask).bit_length() - 1
+            single = Monomial(1 << place, 1).times(whole)
+            vectors["right"][place] += value * product.phase / single.phase
         else:
-            raise ModelError(
-                f"model '{model.name}' is not quadratic: {_jump_reason(string, degree, count)}"
-            )
+            reason = _jump_reason(string, product.degree, count)
+            raise ModelError(f"model '{model.name}' is not quadratic: {reason}")
     used = [kind for kind, vector in vectors.items() if vector.any()]
     if len(used) > 1:
         raise ModelError(

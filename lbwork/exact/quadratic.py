@@ -60,8 +60,8 @@ def _blocks(matrix: np.ndarray) -> np.ndarray:
     return matrix.reshape(sites, 2, sites, 2)
 
 
-def _conserves(matrix: np.ndarray) -> bool:
-    """Whether every 2 x 2 block is a rotation times a number, exactly up to rounding."""
+def conserves_particles(matrix: npt.NDArray[np.float64]) -> bool:
+    """Whether every 2 x 2 block of a real (2L, 2L) form is a rotation times a number."""
     block = _blocks(matrix)
     limit = defaults.CONSERVATION_TOLERANCE * np.abs(matrix).max(initial=0.0)
     even = np.abs(block[:, 0, :, 0] - block[:, 1, :, 1]).max(initial=0.0)
@@ -69,26 +69,27 @@ def _conserves(matrix: np.ndarray) -> bool:
     return bool(max(even, odd) <= limit)
 
 
-def _folded(matrix: np.ndarray) -> np.ndarray:
+def folded(matrix: npt.NDArray[np.float64]) -> npt.NDArray[np.complex128]:
     """Complex (L, L) matrix of a real (2L, 2L) one that conserves particles."""
     block = _blocks(matrix)
     return np.asarray(block[:, 0, :, 0] + 1j * block[:, 1, :, 0])
 
 
-def _unfolded(matrix: np.ndarray) -> np.ndarray:
+def unfolded(matrix: npt.NDArray[np.complex128]) -> npt.NDArray[np.float64]:
+    """Real (2L, 2L) matrix of a complex (L, L) one: the inverse of :func:`folded`."""
     sites = matrix.shape[0]
     block = np.empty((sites, 2, sites, 2))
     block[:, 0, :, 0] = block[:, 1, :, 1] = matrix.real
     block[:, 1, :, 0] = matrix.imag
     block[:, 0, :, 1] = -matrix.imag
-    return block.reshape(2 * sites, 2 * sites)
+    return np.asarray(block.reshape(2 * sites, 2 * sites))
 
 
 def _equation(chain: QuadraticChain) -> tuple[np.ndarray, np.ndarray]:
     """X and Y, as complex (L, L) matrices where particles are conserved, else real (2L, 2L)."""
     drift, source = chain.drift(), chain.source()
-    if _conserves(drift) and _conserves(source):
-        return _folded(drift), _folded(source)
+    if conserves_particles(drift) and conserves_particles(source):
+        return folded(drift), folded(source)
     return drift, source
 
 
@@ -124,24 +125,13 @@ def hamiltonian_currents(
 
     ``d<Z_j>/dt = j_{j-1} - j_j`` + gain and loss. None when H does not conserve Z.
     """
-    if not _conserves(chain.hamiltonian):
+    if not conserves_particles(chain.hamiltonian):
         return None
-    # <Z_k> gains 2 Re(a_ki g_ik) from site i, since Gamma_{2k-1,2k} is minus the imaginary part.
-    strength, state = _folded(chain.hamiltonian), _folded_part(covariance)
-    flow = -2 * (strength * state.T).imag
-    total = np.zeros((chain.sites + 1, chain.sites + 1))
-    total[1:, 1:] = flow.cumsum(0).cumsum(1)
-    bond = np.arange(1, chain.sites)
-    # Into all sites k > j from all i <= j.
-    return np.asarray(total[-1, bond] - total[bond, bond])
-
-
-def _folded_part(covariance: np.ndarray) -> np.ndarray:
-    """The part of a covariance that conserves particles, folded; pair correlations drop out."""
-    block = _blocks(covariance)
-    even = (block[:, 0, :, 0] + block[:, 1, :, 1]) / 2
-    odd = (block[:, 1, :, 0] - block[:, 0, :, 1]) / 2
-    return np.asarray(even + 1j * odd)
+    even, odd = slice(0, None, 2), slice(1, None, 2)
+    gain = (covariance[even] * chain.hamiltonian[odd]).sum(axis=1)
+    gain -= (covariance[odd] * chain.hamiltonian[even]).sum(axis=1)
+    # What the sites up to j lose has crossed bond j.
+    return np.asarray(-np.cumsum(gain)[:-1])
 
 
 def quadratic_state(chain: QuadraticChain) -> QuadraticState:
@@ -163,7 +153,7 @@ def quadratic_state(chain: QuadraticChain) -> QuadraticState:
             "slowly, use a shorter chain",
             solution,
         )
-    covariance = _unfolded(solution) if np.iscomplexobj(solution) else solution
+    covariance = unfolded(solution) if np.iscomplexobj(solution) else solution
     current = hamiltonian_currents(chain, covariance)
     reason = "" if current is not None else "the Hamiltonian does not conserve the magnetisation"
     return QuadraticState(
