@@ -5,10 +5,10 @@ For a chain of :mod:`lbwork.exact.noise` the state is not Gaussian, but its cova
 
     d Gamma/dt = X Gamma + Gamma X^T + sum_k B_k Gamma B_k^T + Y,   X = A - 2 Re N + sum_k B_k^2 / 2
 
-(M. Žnidarič, J. Stat. Mech. L05002 (2010); V. Eisler, J. Stat. Mech. P06007 (2011); this form
-derived here and checked against dense generators). With conserved particles all matrices fold to
-complex L x L ones. The entries of Gamma are the unknowns of a sparse system on an L x L grid, which
-a direct solver with little fill takes to several hundred sites.
+(M. Žnidarič, J. Stat. Mech. L05002 (2010); V. Eisler, J. Stat. Mech. P06007 (2011), from memory;
+this form derived here and checked against dense generators). With conserved particles all matrices
+fold to complex L x L ones. The entries of Gamma are the unknowns of a sparse system on an L x L
+grid, which a direct solver with little fill takes to several hundred sites.
 """
 
 from __future__ import annotations
@@ -24,11 +24,17 @@ import scipy.sparse.linalg
 from lbwork import defaults
 from lbwork.errors import CapacityError, ModelError, NotCertifiedError
 from lbwork.exact.noise import NoisyChain
-from lbwork.exact.quadratic import conserves_particles, folded, quadratic_profile, unfolded
+from lbwork.exact.quadratic import quadratic_profile
+from lbwork.exact.two_point import (
+    TwoPointSystem,
+    factorised,
+    folded_noise,
+    largest_row,
+    two_point_system,
+)
 
 __all__ = ["NoisyState", "RelaxationGap", "noisy_state", "relaxation_gap", "relaxation_levels"]
 
-MAX_UNKNOWNS = 600_000
 MAX_DENSE_UNKNOWNS = 2000
 DENSE_GAP_UNKNOWNS = 700
 LEVELS = 4
@@ -68,124 +74,6 @@ class RelaxationGap:
     residual: float
 
 
-@dataclass(frozen=True, eq=False)
-class _System:
-    """``d r/dt = matrix r + source`` for the independent real entries r of the covariance.
-
-    conserving: the covariance is folded, complex anti-Hermitian (size, size); else real
-    antisymmetric. r: imaginary parts of the diagonal (folded only), then the entries above it, row
-    by row, real parts before imaginary parts.
-    """
-
-    matrix: sparse.csc_matrix
-    source: np.ndarray
-    conserving: bool
-    size: int
-
-    def covariance(self, entries: np.ndarray) -> np.ndarray:
-        """Gamma, real (2L, 2L)."""
-        rows, columns = np.triu_indices(self.size, 1)
-        upper = np.zeros((self.size, self.size), dtype=complex if self.conserving else float)
-        if not self.conserving:
-            upper[rows, columns] = entries
-            return np.asarray(upper - upper.T)
-        levels, real, imaginary = np.split(entries, [self.size, self.size + rows.size])
-        upper[rows, columns] = real + 1j * imaginary
-        return unfolded(upper - upper.conj().T + np.diag(1j * levels))
-
-
-def _folded_noise(form: sparse.csr_matrix) -> sparse.csr_matrix | None:
-    """Complex (L, L) matrix of a sparse form that conserves particles, None when it does not."""
-    even, odd = form[::2], form[1::2]
-    limit = defaults.CONSERVATION_TOLERANCE * abs(form).max()
-    if max(abs(even[:, ::2] - odd[:, 1::2]).max(), abs(even[:, 1::2] + odd[:, ::2]).max()) > limit:
-        return None
-    return sparse.csr_matrix(even[:, ::2] + 1j * odd[:, ::2])
-
-
-def _system(noisy: NoisyChain) -> _System:
-    chain = noisy.chain
-    drift: np.ndarray = chain.drift()
-    source: np.ndarray = chain.source()
-    for form in noisy.noise:
-        square = sparse.coo_matrix(form @ form)
-        np.add.at(drift, (square.row, square.col), square.data / 2)
-    thin = [_folded_noise(form) for form in noisy.noise]
-    conserving = conserves_particles(drift) and conserves_particles(source)
-    conserving = conserving and all(form is not None for form in thin)
-    size = chain.sites if conserving else 2 * chain.sites
-    unknowns = size**2 if conserving else size * (size - 1) // 2
-    if unknowns > MAX_UNKNOWNS:
-        raise CapacityError(
-            f"{chain.sites} sites give {unknowns} unknowns, more than {MAX_UNKNOWNS}; use a "
-            "shorter chain"
-        )
-    noise = [form for form in thin if form is not None] if conserving else list(noisy.noise)
-    if conserving:
-        drift, source = folded(drift), folded(source)
-    rows, columns = np.triu_indices(size, 1)
-    level = np.arange(size) * (size + 1)
-    above, below = rows * size + columns, columns * size + rows
-    whole = _superoperator(sparse.csr_matrix(drift), noise)
-    flat = source.ravel()
-    if not conserving:
-        # Columns: Gamma_ij with i < j enters with its mirror image -Gamma_ij.
-        matrix = whole[above][:, above] - whole[above][:, below]
-        return _System(sparse.csc_matrix(matrix), flat[above], False, size)
-    upper = whole[above]
-    diagonal = whole[level]
-    blocks = [
-        [
-            part(1j * rows_of[:, level]),
-            part(rows_of[:, above] - rows_of[:, below]),
-            part(1j * (rows_of[:, above] + rows_of[:, below])),
-        ]
-        for part, rows_of in ((_imaginary, diagonal), (_real, upper), (_imaginary, upper))
-    ]
-    entries = np.concatenate([flat[level].imag, flat[above].real, flat[above].imag])
-    matrix = sparse.csc_matrix(sparse.bmat(blocks))
-    matrix.eliminate_zeros()
-    return _System(matrix, entries, True, size)
-
-
-def _real(matrix: sparse.csr_matrix) -> sparse.csr_matrix:
-    return matrix.real
-
-
-def _imaginary(matrix: sparse.csr_matrix) -> sparse.csr_matrix:
-    return matrix.imag
-
-
-def _superoperator(drift: sparse.csr_matrix, noise: list[sparse.csr_matrix]) -> sparse.csr_matrix:
-    """``X G + G X^dag + sum_k B_k G B_k^dag`` on the row-major vector of G, sparse."""
-    size = drift.shape[0]
-    one = sparse.identity(size, format="csr")
-    whole = sparse.kron(drift, one) + sparse.kron(one, drift.conj())
-    rows, columns, values = [], [], []
-    for form in map(sparse.coo_matrix, noise):
-        rows.append(np.add.outer(form.row * size, form.row).ravel())
-        columns.append(np.add.outer(form.col * size, form.col).ravel())
-        values.append(np.outer(form.data, form.data.conj()).ravel())
-    if noise:
-        places = (np.concatenate(rows), np.concatenate(columns))
-        whole = whole + sparse.coo_matrix((np.concatenate(values), places), shape=whole.shape)
-    return sparse.csr_matrix(whole)
-
-
-def _factorised(matrix: sparse.csc_matrix) -> scipy.sparse.linalg.SuperLU:
-    # The pattern is symmetric: an ordering made for that halves the fill.
-    return scipy.sparse.linalg.splu(
-        matrix,
-        permc_spec="MMD_AT_PLUS_A",
-        diag_pivot_thresh=0.01,
-        options={"SymmetricMode": True},
-    )
-
-
-def _norm(matrix: sparse.csc_matrix) -> float:
-    return max(float(scipy.sparse.linalg.norm(matrix, np.inf)), np.finfo(float).tiny)
-
-
 def noisy_state(noisy: NoisyChain) -> NoisyState:
     """Profile, current and all two-point functions of the steady state.
 
@@ -193,19 +81,19 @@ def noisy_state(noisy: NoisyChain) -> NoisyState:
     function is not unique (no gain or loss, or a part of the chain out of their reach),
     CapacityError, NotCertifiedError when the residual exceeds 1e-9.
     """
-    system = _system(noisy)
+    system = two_point_system(noisy)
     gap = _slowest(system)
     if gap.zero_modes:
         raise ModelError(
             f"{gap.zero_modes} two-point functions are conserved: the steady state is not unique; "
             "add gain or loss that reaches them"
         )
-    factors = _factorised(system.matrix)
+    factors = factorised(system.matrix)
     entries = -factors.solve(system.source)
     # One step of refinement makes up for the weak pivoting.
     entries -= factors.solve(system.matrix @ entries + system.source)
     miss = np.linalg.norm(system.matrix @ entries + system.source)
-    size = _norm(system.matrix) * np.linalg.norm(entries) + np.linalg.norm(system.source)
+    size = largest_row(system.matrix) * np.linalg.norm(entries) + np.linalg.norm(system.source)
     residual = float(miss / max(size, np.finfo(float).tiny))
     if not residual <= defaults.STEADY_RESIDUAL_TOLERANCE:
         raise NotCertifiedError(
@@ -221,7 +109,7 @@ def noisy_state(noisy: NoisyChain) -> NoisyState:
 def _current(noisy: NoisyChain, covariance: np.ndarray) -> tuple[np.ndarray | None, str]:
     """What all sites up to j lose inside the chain has crossed bond j."""
     inner = sparse.csr_matrix(noisy.chain.hamiltonian)
-    if any(form.nnz and _folded_noise(form) is None for form in (inner, *noisy.noise)):
+    if any(form.nnz and folded_noise(form) is None for form in (inner, *noisy.noise)):
         return None, "the Hamiltonian or a jump inside the chain changes the magnetisation"
     change = np.zeros_like(covariance)
     for form in noisy.noise:
@@ -240,7 +128,7 @@ def relaxation_levels(noisy: NoisyChain) -> npt.NDArray[np.complex128]:
     With conserved particles the L^2 levels of ``c_i^dag c_j``, up to 44 sites; otherwise the
     L(2L-1) levels of all ``w_m w_n``, m < n, up to 31 sites. Raises CapacityError.
     """
-    system = _system(noisy)
+    system = two_point_system(noisy)
     unknowns = system.matrix.shape[0]
     if unknowns > MAX_DENSE_UNKNOWNS:
         raise CapacityError(
@@ -253,14 +141,14 @@ def relaxation_levels(noisy: NoisyChain) -> npt.NDArray[np.complex128]:
 
 def _levels_near_zero(matrix: sparse.csc_matrix, count: int) -> tuple[np.ndarray, np.ndarray]:
     """Levels nearest to a small positive number and their residuals over the norm."""
-    size, norm = matrix.shape[0], _norm(matrix)
+    size, norm = matrix.shape[0], largest_row(matrix)
     if size <= defaults.FILTER_SMALLEST_DIMENSION:
         values, vectors = scipy.linalg.eig(matrix.toarray())
     else:
         # No level has a positive real part: the shifted matrix is regular, and a real level that is
         # farthest to the right is the nearest one.
         shift = norm / (10 * size)
-        factors = _factorised(sparse.csc_matrix(matrix - shift * sparse.identity(size)))
+        factors = factorised(sparse.csc_matrix(matrix - shift * sparse.identity(size)))
         inverse = scipy.sparse.linalg.LinearOperator((size, size), factors.solve, dtype=float)
         start = np.random.default_rng(SEED).standard_normal(size)
         found, vectors = scipy.sparse.linalg.eigs(inverse, min(count, size - 2), v0=start)
@@ -269,10 +157,10 @@ def _levels_near_zero(matrix: sparse.csc_matrix, count: int) -> tuple[np.ndarray
     return values, misses / (norm * np.linalg.norm(vectors, axis=0))
 
 
-def _slowest(system: _System) -> RelaxationGap:
+def _slowest(system: TwoPointSystem) -> RelaxationGap:
     matrix = system.matrix
     size, count = matrix.shape[0], LEVELS
-    limit = defaults.ZERO_MODE_TOLERANCE * _norm(matrix)
+    limit = defaults.ZERO_MODE_TOLERANCE * largest_row(matrix)
     while True:
         values, residuals = _levels_near_zero(matrix, count)
         still = np.abs(values) <= limit
@@ -307,12 +195,12 @@ def relaxation_gap(noisy: NoisyChain) -> RelaxationGap:
     level far from zero that decays more slowly is not excluded: then ``certain`` is False. Raises
     ModelError when nothing decays, CapacityError, NotCertifiedError for a residual above 1e-9.
     """
-    system = _system(noisy)
+    system = two_point_system(noisy)
     gap = _slowest(system)
     size = system.matrix.shape[0]
     if not gap.certain and size <= DENSE_GAP_UNKNOWNS:
         levels = relaxation_levels(noisy)
-        limit = defaults.ZERO_MODE_TOLERANCE * _norm(system.matrix)
+        limit = defaults.ZERO_MODE_TOLERANCE * largest_row(system.matrix)
         decaying = levels[np.abs(levels) > limit]
         value = complex(decaying[0])
         gap = RelaxationGap(
