@@ -24,9 +24,13 @@ Everything a user needs is importable from here; the names are loaded when first
 from __future__ import annotations
 
 import importlib
+import os
 from typing import Any
 
 from lbwork.version import __version__
+
+# Compiled loops and BLAS take turns: threads that spin while they wait would take the cores away.
+os.environ.setdefault("OMP_WAIT_POLICY", "PASSIVE")
 
 _HOMES = {
     "CatalogueEntry": "lbwork.model",

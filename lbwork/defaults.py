@@ -159,6 +159,9 @@ STEADY_DENSE_DIMENSION: Final = 1500
 STEADY_SPACE_DIMENSION: Final = 40_000_000
 """Largest number of entries d**(2L) of a density matrix that is built."""
 
+STEADY_SECTOR_SPACE: Final = 4096
+"""Largest d**(2L) that is solved sector by sector rather than matrix-free."""
+
 STEADY_DEGENERATE_SPACE: Final = 1_100_000
 """Largest d**(2L) for which several steady states are told apart."""
 
@@ -176,6 +179,37 @@ STEADY_POSITIVE: Final = 1e-10
 
 STEADY_NEAR_DEGENERATE: Final = 1e-5
 """Separation over the generator norm below which a steady state is called nearly degenerate."""
+
+ITERATIVE_SHIFT: Final = 0.6
+"""Shift of the split preconditioner over the mean decay rate; the count of applications is flat
+between 0.5 and 0.8 for boundary drives of 6 to 12 sites."""
+
+ITERATIVE_DARK_SHIFT: Final = 1e-8
+"""Shift of the Sylvester preconditioner over the mean decay rate: dark states stay finite."""
+
+ITERATIVE_TOLERANCE: Final = 1e-10
+"""||L rho|| / ||rho|| that the linear solver aims at."""
+
+ITERATIVE_RESTART: Final = 80
+"""Basis vectors of a Krylov cycle where memory does not ask for fewer."""
+
+ITERATIVE_LIMIT: Final = 400
+"""Applications after which a linear equation is given up."""
+
+ITERATIVE_BASIS_BYTES: Final = 700_000_000
+"""A double-precision basis above this is replaced by one in single precision."""
+
+ITERATIVE_TRIAL_DIMENSIONS: Final = (64, 256)
+"""Largest d**L of the two shorter chains that the choice of the splitting is tried on."""
+
+ITERATIVE_TRIAL_LIMIT: Final = 150
+"""Applications after which a trial counts as lost."""
+
+ITERATIVE_COUNT_DIMENSION: Final = 1100
+"""d**L up to which the lower count of applications decides, above it the lower time."""
+
+ITERATIVE_DENSE_SIZE: Final = 600
+"""Components up to this size are solved densely."""
 
 CONSERVATION_TOLERANCE: Final = 1e-12
 """A term conserves the magnetisation when it changes it by less than this times its norm."""

@@ -6,6 +6,7 @@ from lbwork.observables.local import (
     magnetisation_profile,
     reduced_density,
     spectrum_quantities,
+    weight_quantities,
     zz_correlations,
 )
 
@@ -17,5 +18,6 @@ __all__ = [
     "reduced_density",
     "spectrum_quantities",
     "spin_currents",
+    "weight_quantities",
     "zz_correlations",
 ]

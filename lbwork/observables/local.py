@@ -9,6 +9,7 @@ __all__ = [
     "magnetisation_profile",
     "reduced_density",
     "spectrum_quantities",
+    "weight_quantities",
     "zz_correlations",
 ]
 
@@ -58,9 +59,13 @@ def zz_correlations(density: np.ndarray, count: int, dimension: int) -> np.ndarr
     return np.asarray(columns.T @ (populations[:, None] * columns) - np.outer(means, means))
 
 
-def spectrum_quantities(density: np.ndarray) -> tuple[float, float, float]:
-    """Smallest eigenvalue, purity ``tr rho^2`` and von Neumann entropy (natural logarithm)."""
-    weights = np.linalg.eigvalsh(density)
+def weight_quantities(weights: np.ndarray) -> tuple[float, float, float]:
+    """Smallest one, ``sum w^2`` and ``-sum w ln w`` of the eigenvalues of a density matrix."""
     positive = weights[weights > 0]
     entropy = -float(np.sum(positive * np.log(positive)))
-    return float(weights[0]), float(np.sum(weights**2)), max(entropy, 0.0)
+    return float(weights.min()), float(np.sum(weights**2)), max(entropy, 0.0)
+
+
+def spectrum_quantities(density: np.ndarray) -> tuple[float, float, float]:
+    """Smallest eigenvalue, purity ``tr rho^2`` and von Neumann entropy (natural logarithm)."""
+    return weight_quantities(np.linalg.eigvalsh(density))

@@ -3,26 +3,35 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass
 
 import numpy as np
 
 from lbwork import defaults
 from lbwork.errors import CapacityError, NotCertifiedError
 from lbwork.generator import Lindbladian
+from lbwork.iterative import chain_equations
 from lbwork.model import Model
 from lbwork.observables.currents import continuity_error, spin_currents
 from lbwork.observables.local import (
     magnetisation_profile,
     spectrum_quantities,
+    weight_quantities,
     zz_correlations,
 )
+from lbwork.provenance import limited_threads
+from lbwork.spectrum.edge import zero_tolerance
 from lbwork.steady.branches import mixed_limit, steady_branches
+from lbwork.steady.cost import require_fit
+from lbwork.steady.dense_state import component_matrix, make_hermitian
+from lbwork.steady.matrix_free import DegenerateComponent, IterativeStates, iterative_states
 from lbwork.steady.records import SteadyBranch, SteadyOptions, SteadyState
 from lbwork.steady.space import as_matrix
 from lbwork.steady.zero_modes import SectorZeroModes, ZeroModes, zero_modes
 from lbwork.symmetry import Sector, SectorPlan, plan_sectors
+from lbwork.symmetry.charges import label_text
 
-__all__ = ["certified_state", "steady_state"]
+__all__ = ["Finding", "certified_state", "steady_state"]
 
 
 def _unique_density(plan: SectorPlan, found: SectorZeroModes) -> np.ndarray:
@@ -43,29 +52,49 @@ def _has_full_rank(plan: SectorPlan, found: SectorZeroModes) -> bool:
     return smallest > defaults.STEADY_POSITIVE
 
 
+@dataclass(frozen=True)
+class Finding:
+    """How a state was found: what the certificate takes over from the solver.
+
+    ``zero_modes``: how many, ``words``: how they were counted, ``separation``: from the next mode.
+    ``eigenvalues``: of the density matrix, where the solver has them block by block.
+    """
+
+    zero_modes: int
+    words: str
+    separation: float
+    method: str = "factorised"
+    splitting: str = ""
+    applies: int = 0
+    probe_applies: int = 0
+    eigenvalues: np.ndarray | None = None
+
+
 def certified_state(
     generator: Lindbladian,
     density: np.ndarray,
     states: tuple[SteadyBranch, ...],
-    found: tuple[int, str, float],
+    found: Finding,
 ) -> SteadyState:
     """Certificate and observables of a density matrix (D, D) of trace 1, from any solver.
 
-    ``found``: number of zero modes, how they were counted, separation from the next mode. Raises
-    NotCertifiedError with the :class:`SteadyState` as ``partial`` when the state is not steady to
+    ``density`` is made Hermitian in place. Raises NotCertifiedError with the :class:`SteadyState`
+    as ``partial`` when the state is not steady to
     :data:`lbwork.defaults.STEADY_RESIDUAL_TOLERANCE`, not accurate to
     :data:`lbwork.defaults.STEADY_ACCURACY`, or not positive.
     """
     model = generator.model
     count, dimension = model.sites, model.local_dimension
     size = float(np.linalg.norm(density))
-    hermiticity = float(np.linalg.norm(density - density.conj().T)) / size
-    density = (density + density.conj().T) / 2
-    residual = float(np.linalg.norm(generator.apply(density))) / size
+    hermiticity = make_hermitian(density) / size
+    image = generator.apply(density)
+    residual = float(np.linalg.norm(image)) / size
+    del image
     norm = max(generator.norm_bound, np.finfo(float).tiny)
-    smallest, purity, entropy = spectrum_quantities(density)
+    weights = np.linalg.eigvalsh(density) if found.eigenvalues is None else found.eigenvalues
+    smallest, purity, entropy = weight_quantities(weights)
     currents = spin_currents(model, density)
-    zero_count, method, separation = found
+    separation = found.separation
     failures = []
     if residual > defaults.STEADY_RESIDUAL_TOLERANCE * norm:
         failures.append(f"residual {residual:.1e}")
@@ -77,8 +106,8 @@ def certified_state(
         model=model,
         density=density,
         states=states or (SteadyBranch("unique", density, residual, 1.0),),
-        zero_modes=zero_count,
-        zero_mode_method=method,
+        zero_modes=found.zero_modes,
+        zero_mode_method=found.words,
         separation=separation,
         nearly_degenerate=bool(separation < defaults.STEADY_NEAR_DEGENERATE * norm),
         magnetisation=magnetisation_profile(density, count, dimension),
@@ -95,6 +124,10 @@ def certified_state(
             None if currents.current is None else continuity_error(generator, density, currents)
         ),
         certified=not failures,
+        method=found.method,
+        splitting=found.splitting,
+        applies=found.applies,
+        probe_applies=found.probe_applies,
     )
     if failures:
         raise NotCertifiedError(f"steady state of {model.name}: {'; '.join(failures)}", state)
@@ -106,29 +139,119 @@ def steady_state(
     *,
     options: SteadyOptions | None = None,
     progress: Callable[[int, int, Sector], None] | None = None,
+    tell: Callable[[str], None] | None = None,
 ) -> SteadyState:
     """The steady state of a model; all steady states where there are several.
 
     Zero modes are counted in every sector that can have one. With several, ``density`` is the
     long-time limit of the maximally mixed state and ``states`` holds legal states with orthogonal
-    supports. ``progress(done, total, sector)`` is called before each sector. Raises CapacityError
-    for chains that do not fit, NotCertifiedError when the certificate fails.
+    supports. Short chains are solved sector by sector (``progress(done, total, sector)`` before
+    each), long ones matrix-free (``tell(words)`` after each application). Raises CapacityError for
+    chains that do not fit, NotCertifiedError when the certificate fails.
     """
     options = options or SteadyOptions()
-    plan = plan_sectors(model) if isinstance(model, Model) else model
+    plan = None if isinstance(model, Model) else model
+    chain = model if isinstance(model, Model) else model.model
+    entries = chain.local_dimension ** (2 * chain.sites)
+    small = entries <= defaults.STEADY_SECTOR_SPACE
+    if options.method == "matrix-free" or (
+        options.method == "auto" and not small and not options.search_all
+    ):
+        require_fit(chain)
+        try:
+            return _matrix_free_state(chain, plan, options, tell)
+        except DegenerateComponent as error:
+            if entries > defaults.STEADY_DEGENERATE_SPACE:
+                raise NotCertifiedError(
+                    f"{chain.name} has several steady states that no conserved charge tells "
+                    f"apart ({error}); use at most d**(2L) = {defaults.STEADY_DEGENERATE_SPACE}"
+                ) from None
+    plan = plan_sectors(chain) if plan is None else plan
+    return _sector_state(plan, options, progress)
+
+
+def _matrix_free_state(
+    model: Model,
+    plan: SectorPlan | None,
+    options: SteadyOptions,
+    tell: Callable[[str], None] | None,
+) -> SteadyState:
+    """Steady states from preconditioned Krylov iteration."""
+    generator = Lindbladian(model)
+    with limited_threads(1):
+        found = iterative_states(
+            chain_equations(model, None if plan is None else plan.symmetries),
+            splitting=None if options.splitting == "auto" else options.splitting,
+            zero=zero_tolerance(model),
+            tell=tell or (lambda words: None),
+        )
+        eigenvalues, branches = [], []
+        size = generator.dimension
+        several = len(found.components) > 1
+        density = np.zeros((size, size), dtype=complex)
+        names = _component_names(found)
+        for name, part in zip(names, found.components, strict=True):
+            weight = sum(rows for rows, _ in part.space.shapes) / size
+            eigenvalues.append(weight * part.eigenvalues())
+            if several:
+                alone = component_matrix(found.equations, part.space, part.vector)
+                density += weight * alone
+                residual = float(np.linalg.norm(generator.apply(alone)) / np.linalg.norm(alone))
+                branches.append(SteadyBranch(name, alone, residual, weight))
+            else:
+                density = component_matrix(found.equations, part.space, part.vector)
+        summary = Finding(
+            len(found.components) + found.coherences,
+            found.method,
+            found.separation,
+            "matrix-free",
+            found.splitting,
+            found.applies,
+            found.probe_applies,
+            np.concatenate(eigenvalues),
+        )
+        # Solver and vectors make room for the certificate.
+        del found
+        return certified_state(generator, density, tuple(branches), summary)
+
+
+def _component_names(found: IterativeStates) -> list[str]:
+    """Strong charges of each component in words, numbered where they do not tell them apart."""
+    groups = found.equations.groups
+    strong = [index for index, flag in enumerate(groups.strong) if flag]
+    charges = [groups.charges[index] for index in strong]
+    names = []
+    for number, part in enumerate(found.components, start=1):
+        labels = {tuple(groups.labels[ket][strong].tolist()) for ket, _ in part.space.pairs}
+        text = label_text(charges, labels.pop()) if charges and len(labels) == 1 else ""
+        names.append(text or f"state {number}")
+    return [
+        name if names.count(name) == 1 else f"state {number} {name}"
+        for number, name in enumerate(names, start=1)
+    ]
+
+
+def _sector_state(
+    plan: SectorPlan,
+    options: SteadyOptions,
+    progress: Callable[[int, int, Sector], None] | None,
+) -> SteadyState:
+    """Steady states from the null vectors of the sector blocks."""
     if plan.total_dimension > defaults.STEADY_SPACE_DIMENSION:
         raise CapacityError(
             f"a density matrix of {plan.model.sites} sites has {plan.total_dimension} entries, "
             f"limit {defaults.STEADY_SPACE_DIMENSION}; use fewer sites"
         )
     generator = Lindbladian(plan.model)
+    filtered = {"factorised": False, "filtered": True}.get(options.method)
     found: ZeroModes = zero_modes(
         plan,
-        filtered={"auto": None, "factorised": False, "filtered": True}[options.method],
+        filtered=filtered,
         full_rank=None if options.search_all else lambda item: _has_full_rank(plan, item),
         progress=progress,
     )
-    summary = (found.count, found.method, found.separation)
+    method = "filtered" if "Krylov" in found.method else "factorised"
+    summary = Finding(found.count, found.method, found.separation, method)
     if found.count == 1:
         density = _unique_density(plan, found.with_modes[0])
         return certified_state(generator, density, (), summary)

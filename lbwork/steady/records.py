@@ -10,26 +10,38 @@ import numpy as np
 import numpy.typing as npt
 
 from lbwork.errors import UsageError
+from lbwork.iterative import SPLITTINGS
 from lbwork.model import Model
 
 __all__ = ["METHODS", "SteadyBranch", "SteadyOptions", "SteadyState"]
 
-METHODS = ("auto", "factorised", "filtered")
+METHODS = ("auto", "matrix-free", "factorised", "filtered")
 
 
 @dataclass(frozen=True)
 class SteadyOptions:
-    """method: ``factorised`` (dense or sparse factorisation of each sector), ``filtered`` (Krylov
-    search in the exponential of the generator) or ``auto`` (by size).
+    """method: ``matrix-free`` (preconditioned Krylov solution, large chains), ``factorised`` (dense
+    or sparse factorisation of each sector), ``filtered`` (Krylov search in the exponential of the
+    generator) or ``auto`` (by size).
 
-    search_all: search every sector for zero modes, even those that theory excludes.
-    Raises UsageError for an unknown method.
+    splitting: of the matrix-free preconditioner, ``energy`` ((s + i ad_H)(s - D)), ``no-jump`` (the
+    Sylvester operator of Heff) or ``auto`` (tried on shorter chains). search_all: search every
+    sector for zero modes, even those that theory excludes; not with ``matrix-free``.
+    Raises UsageError for an unknown method or splitting.
     """
 
     method: str = "auto"
     search_all: bool = False
+    splitting: str = "auto"
 
     def __post_init__(self) -> None:
+        splittings = ("auto", *SPLITTINGS)
+        if self.splitting not in splittings:
+            raise UsageError(f"splitting '{self.splitting}' is not one of {', '.join(splittings)}")
+        if self.search_all and self.method == "matrix-free":
+            raise UsageError(
+                "search_all needs the sector methods; leave the method 'matrix-free' out"
+            )
         if self.method not in METHODS:
             raise UsageError(f"method '{self.method}' is not one of {', '.join(METHODS)}")
 
@@ -61,7 +73,9 @@ class SteadyState:
     quantity. residual: ``||L rho||_F / ||rho||_F`` by an independent application of L.
     hermiticity_error: ``||rho - rho^dag|| / ||rho||`` before the state was made Hermitian.
     trace: of ``density``. continuity_error: largest ``|d<m_j>/dt - (j_{j-1} - j_j + sources)|``.
-    entropy: von Neumann, natural logarithm.
+    entropy: von Neumann, natural logarithm. method: how it was solved. applies: preconditioned
+    applications of the generator in the solution, probe_applies: those in the search for further
+    zero modes (0 for direct methods); splitting: that of the preconditioner, empty for direct ones.
     """
 
     model: Model
@@ -83,6 +97,10 @@ class SteadyState:
     entropy: float
     continuity_error: float | None
     certified: bool
+    method: str = "factorised"
+    splitting: str = ""
+    applies: int = 0
+    probe_applies: int = 0
 
     def to_dict(self) -> dict[str, Any]:
         """A JSON document without the density matrix."""
@@ -108,6 +126,10 @@ class SteadyState:
             "entropy": self.entropy,
             "continuity_error": self.continuity_error,
             "certified": self.certified,
+            "method": self.method,
+            "splitting": self.splitting,
+            "applies": self.applies,
+            "probe_applies": self.probe_applies,
         }
 
     def _rows(self) -> list[tuple[str, str]]:
@@ -121,6 +143,7 @@ class SteadyState:
             ("spin current", current),
             ("zero modes", f"{self.zero_modes} ({self.zero_mode_method})"),
             ("residual", f"{self.residual:.1e}"),
+            ("method", self._method_words()),
             ("smallest eigenvalue", f"{self.min_eigenvalue:.3e}"),
             ("purity", f"{self.purity:.9g}"),
             ("entropy", f"{self.entropy:.9g}"),
@@ -136,6 +159,14 @@ class SteadyState:
         if self.nearly_degenerate:
             rows.append(("nearly degenerate", f"next mode at {self.separation:.1e}"))
         return rows
+
+    def _method_words(self) -> str:
+        if self.method != "matrix-free":
+            return self.method
+        return (
+            f"matrix-free, {self.splitting} splitting, {self.applies} applications and "
+            f"{self.probe_applies} in the search for further zero modes"
+        )
 
     def __str__(self) -> str:
         rows = self._rows()

@@ -7,7 +7,7 @@ from lbwork.errors import CapacityError, NotCertifiedError, UsageError
 from lbwork.generator import Lindbladian
 from lbwork.model import Jump, Model, Term
 from lbwork.steady import SteadyOptions, steady_state, zero_modes
-from lbwork.steady.ness import certified_state
+from lbwork.steady.ness import Finding, certified_state
 from lbwork.symmetry import plan_sectors
 from tests.chains import driven_chain, kronecker_generator, weakly_driven
 
@@ -92,7 +92,7 @@ def test_a_wrong_state_is_refused_with_what_was_computed():
     model = driven_chain(3, bias=0.5, dephasing=0.2)
     mixed = np.eye(8, dtype=complex) / 8
     with pytest.raises(NotCertifiedError, match="residual") as caught:
-        certified_state(Lindbladian(model), mixed, (), (1, "assumed", 1.0))
+        certified_state(Lindbladian(model), mixed, (), Finding(1, "assumed", 1.0))
     assert caught.value.partial.certified is False
     assert caught.value.partial.purity == pytest.approx(1 / 8)
 
@@ -103,8 +103,8 @@ def test_unknown_method_is_refused():
 
 
 def test_long_chains_are_refused_before_they_start():
-    with pytest.raises(CapacityError, match="13 sites"):
-        steady_state(driven_chain(13))
+    with pytest.raises(CapacityError, match="17 sites"):
+        steady_state(driven_chain(17))
 
 
 def test_kernel_with_exactly_singular_pivots():
