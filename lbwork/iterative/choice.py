@@ -29,9 +29,11 @@ def choose_resources(space: SectorSpace) -> Resources:
     full = defaults.ITERATIVE_RESTART
     if (full + 1) * double <= defaults.ITERATIVE_BASIS_BYTES:
         return Resources(np.float64, full)
-    budget = max(defaults.ITERATIVE_BASIS_BYTES, int(0.2 * usable_memory()))
-    fits = int(budget // (double // 2)) - 1
-    return Resources(np.float32, max(10, min(full, fits)))
+    single = double // 2
+    fits = defaults.ITERATIVE_BASIS_BYTES // single
+    # A short cycle converges slowly; some memory is worth giving for the shortest useful one.
+    affordable = int(0.25 * usable_memory()) // single
+    return Resources(np.float32, max(10, min(full, max(fits, min(24, affordable)))))
 
 
 def trial_applies(equations: ChainEquations, splitting: str) -> int:
@@ -46,9 +48,10 @@ def trial_applies(equations: ChainEquations, splitting: str) -> int:
     right = -solver.apply(start)
     if np.linalg.norm(right) <= defaults.ITERATIVE_TOLERANCE * size:
         return 0
-    target = defaults.ITERATIVE_TOLERANCE * size
     limit = defaults.ITERATIVE_TRIAL_LIMIT
-    solved = solver.solve(right, target, limit=limit, restart=limit)
+    solved = solver.solve(
+        right, defaults.ITERATIVE_TOLERANCE, limit=limit, restart=limit, start=start
+    )
     return solved.applies if solved.converged else 2 * limit
 
 

@@ -37,11 +37,8 @@ class DissipatorResolvent:
         self._transfer = LocalMap(space, terms, form)
         elements = self._transfer.take_table()
         inverse = np.full(space.size, 1 / shift) if elements is None else 1 / (shift - elements)
-        self._inverse = inverse.astype(
-            np.result_type(precision, inverse.dtype)
-            if space.hermitian
-            else np.result_type(precision, np.complex64)
-        )
+        kind = precision if space.hermitian else np.result_type(precision, np.complex64)
+        self._inverse = inverse.astype(kind)
 
     def apply(self, vector: np.ndarray) -> np.ndarray:
         """The image of a vector."""

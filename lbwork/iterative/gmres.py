@@ -14,6 +14,9 @@ import numpy as np
 
 from lbwork.iterative.products import combine, project
 
+ROUGH = 1e-3
+"""Share of the first residual at which the size of the answer is known well enough."""
+
 __all__ = ["LinearMap", "LinearSolution", "gmres"]
 
 LinearMap = Callable[[np.ndarray], np.ndarray]
@@ -54,8 +57,13 @@ def _cycle(
     target: float,
     basis: np.ndarray,
     progress: Callable[[float], None] | None,
+    measure: Callable[[np.ndarray], float] | None,
 ) -> tuple[np.ndarray, list[float]]:
-    """One Krylov cycle; returns the correction in the precision of the basis."""
+    """One Krylov cycle; returns the correction in the precision of the basis.
+
+    ``measure(correction)``: the target for the residual, asked for once when a rough correction is
+    known.
+    """
     beta = float(np.linalg.norm(residual))
     basis[0] = residual / beta
     steps = basis.shape[0] - 1
@@ -73,12 +81,19 @@ def _cycle(
         estimates.append(float(np.linalg.norm(upper @ coefficients - right)))
         if progress is not None:
             progress(estimates[-1])
+        if measure is not None and estimates[-1] <= ROUGH * beta:
+            target = max(target, 0.9 * measure(preconditioner(_combined(coefficients, basis))))
+            measure = None
         if estimates[-1] <= target or length <= 1e-14 * beta:
             break
         basis[step + 1] = image / length
-    combined = np.zeros(basis.shape[1], dtype=basis.dtype)
-    combine(coefficients, basis[: coefficients.size], combined, 1)
-    return preconditioner(combined), estimates
+    return preconditioner(_combined(coefficients, basis)), estimates
+
+
+def _combined(coefficients: np.ndarray, basis: np.ndarray) -> np.ndarray:
+    total = np.zeros(basis.shape[1], dtype=basis.dtype)
+    combine(coefficients, basis[: coefficients.size], total, 1)
+    return total
 
 
 def gmres(
@@ -90,10 +105,13 @@ def gmres(
     restart: int,
     limit: int,
     precision: type | None = None,
+    start: np.ndarray | None = None,
     progress: Callable[[float], None] | None = None,
 ) -> LinearSolution:
     """Solve ``A x = b`` to ``||b - A x|| <= target``, starting from x = 0.
 
+    With ``start`` the target is ``target * ||start + x||`` instead, for the null vector
+    ``start + x`` of A when ``b = -A start``.
     ``restart``: vectors per cycle; ``limit``: applications in all; ``precision``: type of basis and
     preconditioner (that of ``b`` by default). ``operator`` must accept both types.
     """
@@ -104,20 +122,35 @@ def gmres(
     size = float(np.linalg.norm(residual))
     history: list[float] = []
     basis = np.empty((0, right_side.size), dtype=kind)
-    while size > target and len(history) < limit:
+    absolute = 0.0 if start is not None else target
+    while size > absolute and len(history) < limit:
         steps = min(restart, limit - len(history))
         if basis.shape[0] != steps + 1:
             basis = np.empty((steps + 1, right_side.size), dtype=kind)
         # A narrow cycle cannot gain more digits than it carries.
-        goal = max(target, 2e-6 * size) if narrow else target
+        reached = solution if start is None else start + solution
+        absolute = target if start is None else target * float(np.linalg.norm(reached))
+        goal = max(absolute, 2e-6 * size) if narrow else absolute
+
+        def measure(correction: np.ndarray, reached: np.ndarray = reached) -> float:
+            return target * float(np.linalg.norm(reached + correction))
+
         # The recomputed residual is a little above the recursive one.
         correction, estimates = _cycle(
-            operator, preconditioner, residual.astype(kind, copy=False), 0.9 * goal, basis, progress
+            operator,
+            preconditioner,
+            residual.astype(kind, copy=False),
+            0.9 * goal,
+            basis,
+            progress,
+            None if start is None else measure,
         )
         solution += correction
         residual = right_side - operator(solution)
         before, size = size, float(np.linalg.norm(residual))
         history += estimates
+        if start is not None:
+            absolute = target * float(np.linalg.norm(start + solution))
         if size > 0.5 * before and len(estimates) < restart:
             break
-    return LinearSolution(solution, size, len(history), tuple(history), size <= target)
+    return LinearSolution(solution, size, len(history), tuple(history), size <= absolute)

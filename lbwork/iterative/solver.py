@@ -104,9 +104,13 @@ class SectorSolver:
         *,
         limit: int,
         restart: int,
+        start: np.ndarray | None = None,
         progress: Callable[[float], None] | None = None,
     ) -> LinearSolution:
-        """``L x = b`` to ``||b - L x|| <= target``; b must have no part along left zero modes."""
+        """``L x = b`` to ``||b - L x|| <= target``; b must have no part along left zero modes.
+
+        With ``start`` and ``b = -L start``: to ``||L (start + x)|| <= target ||start + x||``.
+        """
         return gmres(
             self.apply,
             self.precondition,
@@ -115,5 +119,6 @@ class SectorSolver:
             restart=restart,
             limit=limit,
             precision=self.precision.type,
+            start=start,
             progress=progress,
         )

@@ -95,14 +95,13 @@ def _component_state(
     start = space.identity()
     start /= space.trace(start).real
     size = float(np.linalg.norm(start))
-    target = defaults.ITERATIVE_TOLERANCE * size
     vector = start
     right = -solver.apply(start)
-    if np.linalg.norm(right) > 1e-3 * target:
+    if np.linalg.norm(right) > 1e-3 * defaults.ITERATIVE_TOLERANCE * size:
         solved = solver.solve(
             right,
-            # The answer is longer than the start, its residual is relative to its own length.
-            0.8 * target,
+            defaults.ITERATIVE_TOLERANCE,
+            start=start,
             limit=defaults.ITERATIVE_LIMIT,
             restart=restart,
             progress=lambda value: tell(
