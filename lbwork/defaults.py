@@ -216,3 +216,19 @@ CONSERVATION_TOLERANCE: Final = 1e-12
 
 FILTER_SMALLEST_DIMENSION: Final = 60
 """Blocks up to this size are always solved directly instead of by a Krylov search."""
+
+# integrability
+RESHETIKHIN_TOLERANCE: Final = 1e-9
+"""Relative residual below which a Reshetikhin-type condition is satisfied."""
+
+RESHETIKHIN_COMMUTING: Final = 1e-12
+"""||C|| / ||q||^3 below which neighbouring densities commute."""
+
+CHARGES_TOLERANCE: Final = 1e-9
+"""Singular values below this times the largest belong to conserved operators."""
+
+CHARGES_ENTRIES: Final = 60_000_000
+"""Largest number of entries of a sparse commutator map."""
+
+CHARGES_DENSE_ENTRIES: Final = 60_000_000
+"""Largest number of entries of a part that does not decouple and is solved densely."""
