@@ -232,3 +232,15 @@ CHARGES_ENTRIES: Final = 60_000_000
 
 CHARGES_DENSE_ENTRIES: Final = 60_000_000
 """Largest number of entries of a part that does not decouple and is solved densely."""
+
+CHARGES_RANGE: Final = 4
+"""Range of conserved charges that is searched unless another is asked for."""
+
+CHARGES_STRINGS: Final = 1_100_000
+"""Largest number of strings that elimination takes."""
+
+CHARGES_LISTED: Final = 64
+"""Spaces of conserved operators up to this dimension are given a readable basis."""
+
+CHARGES_RESIDUAL: Final = 1e-9
+"""Largest ||[Q, A]|| / (||q|| ||A||) of a conserved operator."""

@@ -1,11 +1,16 @@
 """Is a generator integrable? Tests that need nothing but its two-site density."""
 
+from lbwork.integrability.charge_records import ConservedCharge, ConservedCharges
+from lbwork.integrability.charges import conserved_charges
 from lbwork.integrability.density import LocalDensity, hamiltonian_density, local_density
 from lbwork.integrability.reshetikhin import ReshetikhinResult, reshetikhin_residual
 
 __all__ = [
+    "ConservedCharge",
+    "ConservedCharges",
     "LocalDensity",
     "ReshetikhinResult",
+    "conserved_charges",
     "hamiltonian_density",
     "local_density",
     "reshetikhin_residual",

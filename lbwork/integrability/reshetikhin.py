@@ -26,7 +26,7 @@ from lbwork.integrability.commutators import (
     digits_of,
 )
 from lbwork.integrability.density import LocalDensity, local_density
-from lbwork.integrability.least_squares import minimal_solution
+from lbwork.integrability.least_squares import factored
 from lbwork.model import Model
 
 __all__ = ["ReshetikhinResult", "reshetikhin_residual"]
@@ -172,7 +172,8 @@ def reshetikhin_residual(
     spread.row = np.searchsorted(every, rows)[columns.tocoo().row]
     spread.data = spread.data * weights[spread.row]
     target *= weights
-    solution, residual, freedom = minimal_solution(spread.tocsc(), -target)
+    factors = factored(spread.tocsc())
+    solution, residual = (part.ravel() for part in factors.solve(-target[:, None]))
     commuting = norm < defaults.RESHETIKHIN_COMMUTING
     ranged = leading > defaults.RESHETIKHIN_COMMUTING
     if not ranged:
@@ -192,5 +193,5 @@ def reshetikhin_residual(
         strength=0.0 if commuting else norm,
         leading=leading if ranged else 0.0,
         derivative=density.basis.matrix(tensor) * density.scale**2,
-        freedom=freedom,
+        freedom=factors.freedom,
     )
