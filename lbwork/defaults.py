@@ -147,6 +147,18 @@ GAP_RESIDUAL_TOLERANCE: Final = 1e-9
 GAP_AGREEMENT_TOLERANCE: Final = 1e-7
 """Two independent starts agree when their gaps differ by less than this share."""
 
+GAP_EXHAUSTIVE_SPACE: Final = 16384
+"""Largest d**(2L) whose gap is sought exhaustively in all sectors."""
+
+GAP_FALLBACK_SPACE: Final = 65536
+"""Largest d**(2L) that is searched exhaustively after the search near zero failed."""
+
+GAP_NEAREST_TOLERANCE: Final = 2e-11
+"""Residual over the norm of the generator at which a level nearest to zero has converged."""
+
+GAP_ORDERED: Final = 2
+"""Levels after the nearest that are followed until their order is certain."""
+
 FILTER_DEGREE: Final = 24
 FILTER_STEP: Final = 8.0
 FILTER_TIME: Final = 64.0
@@ -210,6 +222,28 @@ ITERATIVE_COUNT_DIMENSION: Final = 1100
 
 ITERATIVE_DENSE_SIZE: Final = 600
 """Components up to this size are solved densely."""
+
+PROCESS_BYTES: Final = 240_000_000
+"""Resident size of a process that has loaded the package."""
+
+PLAN_SECONDS: Final = 0.8
+"""Finding the symmetries, trying splittings on short chains, loading compiled loops."""
+
+LOCAL_SECONDS: Final = 1.6e-9
+PASS_SECONDS: Final = 1.2e-8
+ORTHOGONAL_SECONDS: Final = 1e-9
+"""Seconds per entry of a vector: for each non-zero of the local terms, for the passes over the
+vector in one application, and for each basis vector in the orthogonalisation; two cores."""
+
+EIGEN_OPERATIONS: Final = 25.0
+"""Operations of a Hermitian eigen-decomposition over the cube of its dimension, counted at the rate
+of matrix products (it runs at a third of it)."""
+
+EIGEN_SECONDS: Final = 3e-11
+"""Seconds per operation of the eigenvalues of a complex Hermitian block."""
+
+CERTIFICATE_SECONDS: Final = 1.2e-8
+"""Seconds per byte of a density matrix for residual, observables and continuity."""
 
 CONSERVATION_TOLERANCE: Final = 1e-12
 """A term conserves the magnetisation when it changes it by less than this times its norm."""

@@ -88,6 +88,11 @@ class SectorSolver:
 
         self._precondition = precondition
 
+    @staticmethod
+    def components(equations: ChainEquations, space: SectorSpace) -> list[list[int]]:
+        """Blocks of a sector that the jumps join; see :meth:`SectorGenerator.components`."""
+        return SectorGenerator(space, equations.form).components()
+
     def apply(self, vector: np.ndarray) -> np.ndarray:
         """``L`` on a vector."""
         return self.generator.apply(vector)

@@ -2,9 +2,9 @@
 
 from lbwork.spectrum.archive import sector_from_archive, sector_to_archive
 from lbwork.spectrum.cost import SectorCost, cost_estimate
-from lbwork.spectrum.edge import GapOptions
 from lbwork.spectrum.full import full_spectrum, sector_spectrum
 from lbwork.spectrum.gap import spectral_gap
+from lbwork.spectrum.options import GapOptions
 from lbwork.spectrum.records import (
     GapResult,
     SectorSpectrum,

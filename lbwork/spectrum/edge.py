@@ -9,30 +9,13 @@ import scipy.sparse as sparse
 
 from lbwork import defaults
 from lbwork.errors import CapacityError, NotCertifiedError
-from lbwork.generator import Lindbladian
-from lbwork.model import Model
 from lbwork.spectrum.dense import dense_levels
+from lbwork.spectrum.options import GapOptions
 from lbwork.spectrum.parts import Parts, irreducible_parts, rounding_scale
 from lbwork.spectrum.rightmost import SlowLevels, require_decay, rightmost_levels
 from lbwork.symmetry import Sector, SectorBlock, SectorPlan
 
-__all__ = ["GapOptions", "SectorEdge", "sector_edge", "zero_tolerance"]
-
-
-@dataclass(frozen=True)
-class GapOptions:
-    """How the gap is sought.
-
-    dense_dimension: largest part diagonalised densely. levels: slowest levels sought in larger
-    parts. starts: independent start vectors there, at least 2. seed: of the start vectors.
-    populations_only: search only the sectors that can carry a trace (equal charge of ket and bra).
-    """
-
-    dense_dimension: int = defaults.GAP_DENSE_DIMENSION
-    levels: int = defaults.GAP_LEVELS
-    starts: int = 2
-    seed: int = 0
-    populations_only: bool = False
+__all__ = ["SectorEdge", "sector_edge"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -53,11 +36,6 @@ class SectorEdge:
     def method(self) -> str:
         """How the levels were found, in words."""
         return "filtered Krylov search, independent starts agree" if self.iterative else "dense"
-
-
-def zero_tolerance(model: Model) -> float:
-    """Absolute size below which a level counts as zero: the tolerance times the norm bound."""
-    return defaults.ZERO_MODE_TOLERANCE * max(Lindbladian(model).norm_bound, np.finfo(float).tiny)
 
 
 def _iterative_part(

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 
 import numpy as np
 import scipy.sparse as sparse
@@ -13,7 +14,9 @@ from lbwork.errors import NotCertifiedError
 from lbwork.generator import Lindbladian, doubled_to_vector
 from lbwork.model import Model
 from lbwork.spectrum.certificate import level_residual
-from lbwork.spectrum.edge import GapOptions, SectorEdge, sector_edge, zero_tolerance
+from lbwork.spectrum.edge import SectorEdge, sector_edge
+from lbwork.spectrum.nearest import nearest_gap
+from lbwork.spectrum.options import GapOptions, zero_tolerance
 from lbwork.spectrum.parts import rounding_scale
 from lbwork.spectrum.populations import population_sectors
 from lbwork.spectrum.records import GapResult
@@ -93,21 +96,50 @@ def spectral_gap(
     *,
     options: GapOptions | None = None,
     progress: Callable[[int, int, Sector], None] | None = None,
+    tell: Callable[[str], None] | None = None,
 ) -> GapResult:
-    """The gap ``min -Re lambda`` over all levels that are not zero modes, in all sectors.
+    """The gap ``min -Re lambda`` over all levels that are not zero modes.
 
-    Dense where a part has at most ``options.dense_dimension`` states, otherwise a Krylov search in
-    the exponential of the generator from independent starts. Levels on the imaginary axis count as
-    oscillating modes and make the gap 0; ``sector_gaps`` lists the slowest rate of each sector.
+    Short chains: exhaustive search of all sectors. Long chains: the levels nearest to zero of the
+    sectors of equal ket and bra charge (``tell(words)`` on the way); ``scope`` of the result says
+    what was searched. The exhaustive search is dense where a part has at most
+    ``options.dense_dimension`` states, otherwise a Krylov search in the exponential of the
+    generator from independent starts. Levels on the imaginary axis count as oscillating modes and
+    make the gap 0; ``sector_gaps`` lists the slowest rate of each sector.
     ``progress(done, total, sector)`` is called before each sector. Raises CapacityError when a
     sector is too large, NotCertifiedError when starts disagree or the residual, recomputed with the
     generator itself, is above :data:`lbwork.defaults.GAP_RESIDUAL_TOLERANCE`.
     """
     options = options or GapOptions()
+    chain = model if isinstance(model, Model) else model.model
+    entries = chain.local_dimension ** (2 * chain.sites)
+    method = options.method
+    if method == "auto":
+        method = "exhaustive" if entries <= defaults.GAP_EXHAUSTIVE_SPACE else "nearest"
+    if method == "nearest":
+        report = None if isinstance(model, Model) else model.symmetries
+        try:
+            return nearest_gap(chain, options, report, tell or (lambda words: None))
+        except NotCertifiedError as error:
+            # Degenerate kernels and structureless chains: every level of the sectors decides.
+            affordable = entries <= defaults.GAP_FALLBACK_SPACE
+            if options.method != "auto" or error.partial is not None or not affordable:
+                raise
+            options = replace(options, populations_only=options.populations_only is not False)
     plan = plan_sectors(model) if isinstance(model, Model) else model
+    return _exhaustive_gap(plan, options, progress)
+
+
+def _exhaustive_gap(
+    plan: SectorPlan,
+    options: GapOptions,
+    progress: Callable[[int, int, Sector], None] | None,
+) -> GapResult:
+    """The gap from every sector's slowest levels."""
     generator = Lindbladian(plan.model)
     tolerance = zero_tolerance(plan.model)
     sectors = population_sectors(plan) if options.populations_only else plan.sectors
+    scope = "sectors of equal ket and bra charge" if options.populations_only else "all sectors"
     edges = []
     for done, sector in enumerate(sectors):
         if progress is not None:
@@ -134,6 +166,7 @@ def spectral_gap(
             np.zeros(0, complex),
             tolerance,
             plan.model,
+            scope=scope,
         )
     best = min(moving, key=lambda edge: -edge.slow[0].real)
     level = complex(best.slow[0])
@@ -155,6 +188,7 @@ def spectral_gap(
         tolerance=tolerance,
         model=plan.model,
         certified=residual <= defaults.GAP_RESIDUAL_TOLERANCE,
+        scope=scope,
     )
     if not result.certified:
         raise NotCertifiedError(

@@ -200,7 +200,9 @@ class GapResult:
     ``||L v - lambda v|| / ||L||`` for a normalised v, recomputed. slow_modes: complex128, the
     slowest distinct levels. methods: how each searched sector was treated. sector_gaps: slowest
     rate in each searched sector, None where all is zero. tolerance: absolute size below which a
-    level counts as zero.
+    level counts as zero. scope: what was searched, in words. applies: preconditioned applications
+    (matrix-free method). mode: operator (D, D) of Frobenius norm 1 that decays with the gap
+    (matrix-free method, else None).
     """
 
     gap: float
@@ -217,6 +219,9 @@ class GapResult:
     tolerance: float
     model: Model
     certified: bool = True
+    scope: str = "all sectors"
+    applies: int = 0
+    mode: npt.NDArray[np.complex128] | None = None
 
     def to_dict(self) -> dict[str, Any]:
         """A JSON document; complex numbers as [re, im]."""
@@ -235,6 +240,8 @@ class GapResult:
             "slow_modes": pairs(self.slow_modes),
             "tolerance": self.tolerance,
             "certified": self.certified,
+            "scope": self.scope,
+            "applies": self.applies,
         }
 
     def _rows(self) -> list[list[str]]:
@@ -246,7 +253,8 @@ class GapResult:
             ["oscillating modes", str(self.oscillating_modes)],
             ["residual", f"{self.residual:.1e} ({self.residual_space})"],
             ["sector", self.sector],
-            ["sectors searched", str(len(self.searched))],
+            ["sectors searched", f"{len(self.searched)} ({self.scope})"],
+            ["slow levels", "  ".join(f"{value:.6g}" for value in self.slow_modes[:4])],
         ]
 
     def __str__(self) -> str:

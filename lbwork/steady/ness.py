@@ -10,7 +10,7 @@ import numpy as np
 from lbwork import defaults
 from lbwork.errors import CapacityError, NotCertifiedError
 from lbwork.generator import Lindbladian
-from lbwork.iterative import chain_equations
+from lbwork.iterative import chain_equations, component_matrix, make_hermitian
 from lbwork.model import Model
 from lbwork.observables.currents import continuity_error, spin_currents
 from lbwork.observables.local import (
@@ -20,10 +20,9 @@ from lbwork.observables.local import (
     zz_correlations,
 )
 from lbwork.provenance import limited_threads
-from lbwork.spectrum.edge import zero_tolerance
+from lbwork.spectrum.options import zero_tolerance
 from lbwork.steady.branches import mixed_limit, steady_branches
-from lbwork.steady.cost import require_fit
-from lbwork.steady.dense_state import component_matrix, make_hermitian
+from lbwork.steady.cost import steady_cost
 from lbwork.steady.matrix_free import DegenerateComponent, IterativeStates, iterative_states
 from lbwork.steady.records import SteadyBranch, SteadyOptions, SteadyState
 from lbwork.steady.space import as_matrix
@@ -157,7 +156,8 @@ def steady_state(
     if options.method == "matrix-free" or (
         options.method == "auto" and not small and not options.search_all
     ):
-        require_fit(chain)
+        report = None if plan is None else plan.symmetries
+        steady_cost(chain, report).require_fit(chain.sites)
         try:
             return _matrix_free_state(chain, plan, options, tell)
         except DegenerateComponent as error:
@@ -192,7 +192,7 @@ def _matrix_free_state(
         names = _component_names(found)
         for name, part in zip(names, found.components, strict=True):
             weight = sum(rows for rows, _ in part.space.shapes) / size
-            eigenvalues.append(weight * part.eigenvalues())
+            eigenvalues.append(weight * part.eigenvalues)
             if several:
                 alone = component_matrix(found.equations, part.space, part.vector)
                 density += weight * alone

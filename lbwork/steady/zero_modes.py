@@ -9,7 +9,7 @@ import numpy as np
 
 from lbwork import defaults
 from lbwork.errors import NotCertifiedError
-from lbwork.spectrum.edge import zero_tolerance
+from lbwork.spectrum.options import zero_tolerance
 from lbwork.spectrum.parts import irreducible_parts, rounding_scale
 from lbwork.spectrum.populations import population_labels
 from lbwork.steady.kernel import SectorKernel, sector_kernel

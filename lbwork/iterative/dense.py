@@ -1,14 +1,22 @@
-"""Density matrices as (D, D) arrays, with little memory besides the array itself."""
+"""Sector vectors and small sectors as dense arrays, with little memory besides the array."""
 
 from __future__ import annotations
 
 import numpy as np
 
-from lbwork.iterative import ChainEquations, SectorSpace
+from lbwork.iterative.solver import ChainEquations, SectorSolver
+from lbwork.iterative.space import SectorSpace
 
-__all__ = ["component_matrix", "make_hermitian"]
+__all__ = ["component_matrix", "dense_matrix", "make_hermitian"]
 
 _ROWS = 256
+
+
+def dense_matrix(solver: SectorSolver) -> np.ndarray:
+    """The generator of a small sector as a dense matrix (n, n), column by column."""
+    size = solver.space.size
+    unit: np.ndarray = np.eye(size, dtype=solver.space.dtype)
+    return np.array([solver.apply(unit[index]) for index in range(size)]).T
 
 
 def make_hermitian(matrix: np.ndarray) -> float:
