@@ -278,3 +278,6 @@ CHARGES_LISTED: Final = 64
 
 CHARGES_RESIDUAL: Final = 1e-9
 """Largest ||[Q, A]|| / (||q|| ||A||) of a conserved operator."""
+
+CHARGES_FINITE_DIMENSION: Final = 70_000
+"""Largest number of states of a chain on which a charge is checked."""

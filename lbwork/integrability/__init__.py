@@ -3,13 +3,16 @@
 from lbwork.integrability.charge_records import ConservedCharge, ConservedCharges
 from lbwork.integrability.charges import conserved_charges
 from lbwork.integrability.density import LocalDensity, hamiltonian_density, local_density
+from lbwork.integrability.finite_checks import FiniteCheck, check_charge
 from lbwork.integrability.reshetikhin import ReshetikhinResult, reshetikhin_residual
 
 __all__ = [
     "ConservedCharge",
     "ConservedCharges",
+    "FiniteCheck",
     "LocalDensity",
     "ReshetikhinResult",
+    "check_charge",
     "conserved_charges",
     "hamiltonian_density",
     "local_density",
