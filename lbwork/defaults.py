@@ -281,3 +281,9 @@ CHARGES_RESIDUAL: Final = 1e-9
 
 CHARGES_FINITE_DIMENSION: Final = 70_000
 """Largest number of states of a chain on which a charge is checked."""
+
+CHARGES_NEAR_STRINGS: Final = 70_000
+"""Largest number of strings among which nearly conserved operators are sought."""
+
+CHARGES_NEAR_PART: Final = 4500
+"""Largest decoupled part among which nearly conserved operators are sought."""

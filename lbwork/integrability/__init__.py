@@ -4,6 +4,7 @@ from lbwork.integrability.charge_records import ConservedCharge, ConservedCharge
 from lbwork.integrability.charges import conserved_charges
 from lbwork.integrability.density import LocalDensity, hamiltonian_density, local_density
 from lbwork.integrability.finite_checks import FiniteCheck, check_charge
+from lbwork.integrability.nearly_conserved import NearlyConserved, nearly_conserved
 from lbwork.integrability.reshetikhin import ReshetikhinResult, reshetikhin_residual
 
 __all__ = [
@@ -11,10 +12,12 @@ __all__ = [
     "ConservedCharges",
     "FiniteCheck",
     "LocalDensity",
+    "NearlyConserved",
     "ReshetikhinResult",
     "check_charge",
     "conserved_charges",
     "hamiltonian_density",
     "local_density",
+    "nearly_conserved",
     "reshetikhin_residual",
 ]
