@@ -156,6 +156,11 @@ GAP_FALLBACK_SPACE: Final = 65536
 GAP_NEAREST_TOLERANCE: Final = 2e-11
 """Residual over the norm of the generator at which a level nearest to zero has converged."""
 
+DAVIDSON_CAPACITY: Final = 24
+DAVIDSON_KEPT: Final = 9
+DAVIDSON_STARTS: Final = 4
+"""Search space of the levels nearest to zero: largest, kept at a restart, random start vectors."""
+
 GAP_ORDERED: Final = 2
 """Levels after the nearest that are followed until their order is certain."""
 
@@ -245,6 +250,9 @@ EIGEN_SECONDS: Final = 3e-11
 CERTIFICATE_SECONDS: Final = 1.2e-8
 """Seconds per byte of a density matrix for residual, observables and continuity."""
 
+COUNTING_TOLERANCE: Final = 1e-11
+"""Relative residual of the equations behind the cumulants."""
+
 CONSERVATION_TOLERANCE: Final = 1e-12
 """A term conserves the magnetisation when it changes it by less than this times its norm."""
 
@@ -287,3 +295,18 @@ CHARGES_NEAR_STRINGS: Final = 70_000
 
 CHARGES_NEAR_PART: Final = 4500
 """Largest decoupled part among which nearly conserved operators are sought."""
+
+SUBCHAIN_TOLERANCE: Final = 1e-9
+"""Leakage out of diagonal density matrices, and error of rates, relative to the generator."""
+
+SUBCHAIN_STATES: Final = 1_100_000
+"""Largest number of states of a classical process that is solved."""
+
+SUBCHAIN_DENSE: Final = 400
+"""Classical processes up to this size are solved densely."""
+
+SUBCHAIN_LISTED: Final = 8
+"""Stationary states of a large process up to which its gap is sought."""
+
+SUBCHAIN_RESIDUAL: Final = 1e-9
+"""Largest residual of a stationary distribution and of the slowest level."""

@@ -1,6 +1,7 @@
 """Matrix-free work with the generator, sector by sector: linear equations with splittings."""
 
 from lbwork.iterative.choice import choose_resources, choose_splitting
+from lbwork.iterative.closed import ClosedChain, closed_chain
 from lbwork.iterative.cost import IterationCost, iteration_cost
 from lbwork.iterative.davidson import NearestLevels, nearest_levels
 from lbwork.iterative.dense import component_matrix, dense_matrix, make_hermitian
@@ -11,6 +12,7 @@ from lbwork.iterative.space import SectorSpace, differences, whole_space
 __all__ = [
     "SPLITTINGS",
     "ChainEquations",
+    "ClosedChain",
     "IterationCost",
     "NearestLevels",
     "Probe",
@@ -19,6 +21,7 @@ __all__ = [
     "chain_equations",
     "choose_resources",
     "choose_splitting",
+    "closed_chain",
     "component_matrix",
     "dense_matrix",
     "differences",

@@ -6,6 +6,7 @@ import numpy as np
 import scipy.sparse as sparse
 from scipy.sparse.csgraph import connected_components
 
+from lbwork import defaults
 from lbwork.errors import SymmetryError
 from lbwork.iterative.kernels import (
     add_sandwiches,
@@ -30,9 +31,15 @@ def sorted_operator(matrix: sparse.csr_matrix, space: SectorSpace) -> sparse.csr
     order = space.groups.order
     moved = matrix.tocsr()[order][:, order].tocoo()
     group = space.groups.group_of
-    if np.any(group[moved.row] != group[moved.col]):
-        raise SymmetryError("the Hamiltonian joins two charge groups; the charges do not hold")
+    joining = group[moved.row] != group[moved.col]
+    if np.any(joining):
+        size = np.abs(moved.data)
+        if size[joining].max() > defaults.SYMMETRY_TOLERANCE * size.max():
+            raise SymmetryError("the Hamiltonian joins two charge groups; the charges do not hold")
+        # Rounding of a rotated basis.
+        moved.data[joining] = 0
     result = moved.tocsr()
+    result.eliminate_zeros()
     result.sort_indices()
     return result
 

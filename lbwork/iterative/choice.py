@@ -32,8 +32,8 @@ def choose_resources(space: SectorSpace) -> Resources:
     single = double // 2
     fits = defaults.ITERATIVE_BASIS_BYTES // single
     # A short cycle converges slowly; some memory is worth giving for the shortest useful one.
-    affordable = int(0.25 * usable_memory()) // single
-    return Resources(np.float32, max(10, min(full, max(fits, min(24, affordable)))))
+    affordable = int(0.35 * usable_memory()) // single
+    return Resources(np.float32, max(10, min(full, max(fits, min(42, affordable)))))
 
 
 def trial_applies(equations: ChainEquations, splitting: str) -> int:

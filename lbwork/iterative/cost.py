@@ -39,7 +39,7 @@ class IterationCost:
 def product_rate(precision: type = np.float64) -> float:
     """Operations per second of a matrix product of moderate size, shared out to the threads."""
     size = 384
-    factor = np.ones((size, size), dtype=precision)
+    factor: np.ndarray = np.ones((size, size), dtype=precision)
     out = np.empty_like(factor)
     best = np.inf
     with limited_threads(1):

@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 import scipy.linalg
 
+from lbwork import defaults
 from lbwork.iterative.probe import smooth_start
 from lbwork.iterative.products import combine, project
 from lbwork.iterative.solver import SectorSolver
@@ -150,21 +151,23 @@ def nearest_levels(
     seed: int,
     tolerance: float,
     excluded: np.ndarray | None = None,
+    first: np.ndarray | None = None,
     target: complex = 0.0,
     wanted: int = 1,
     ordered: int = 2,
     limit: int = 400,
-    capacity: int = 24,
-    keep: int = 9,
-    starts: int = 4,
+    capacity: int = defaults.DAVIDSON_CAPACITY,
+    keep: int = defaults.DAVIDSON_KEPT,
+    starts: int = defaults.DAVIDSON_STARTS,
     tell: Callable[[str], None] = lambda text: None,
 ) -> NearestLevels:
     """The ``wanted`` levels nearest to ``target`` to ``||L v - lambda v|| <= tolerance``.
 
     ``excluded`` (m, n): orthonormal rows whose orthogonal complement L maps into itself (left zero
-    modes); levels inside it are sought. ``ordered``: further levels that are followed until their
-    order is certain. A real conjugate pair counts as one level. Seeds give independent starts.
-    Residuals above the tolerance tell that ``limit`` applications did not suffice.
+    modes); levels inside it are sought. ``first``: a vector to begin with. ``ordered``: further
+    levels that are followed until their order is certain. A real conjugate pair counts as one
+    level. Seeds give independent starts. Residuals above the tolerance tell that ``limit``
+    applications did not suffice.
     """
     size, kind = solver.space.size, np.dtype(solver.space.dtype)
     rows = np.zeros((0, size), dtype=kind) if excluded is None else excluded
@@ -176,7 +179,9 @@ def nearest_levels(
     def smoothed(vector: np.ndarray) -> np.ndarray:
         return solver.precondition(vector.astype(solver.precision)).astype(kind)
 
-    for number in range(min(starts, capacity)):
+    if first is not None:
+        search.widen(first)
+    for number in range(min(starts, capacity - 1)):
         start = np.asarray(smooth_start(solver, 1000 * seed + number), dtype=kind)
         search.widen(smoothed(start))
     while True:

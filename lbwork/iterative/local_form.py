@@ -17,7 +17,7 @@ import scipy.sparse as sparse
 from lbwork.generator.embedding import embed
 from lbwork.model import Model
 
-__all__ = ["LocalForm", "SupportJumps", "local_form"]
+__all__ = ["LocalForm", "SupportJumps", "local_form", "sorted_sites", "turned_operator"]
 
 _DROP = 1e-15
 
@@ -81,6 +81,18 @@ def _site_rotation(
         local = np.eye(dimension) if rotation is None else rotation[site % len(rotation)]
         full = np.kron(full, local)
     return full
+
+
+def turned_operator(
+    rotation: np.ndarray | None, sites: tuple[int, ...], dimension: int
+) -> np.ndarray | None:
+    """The rotation of some sites as a matrix (d**k, d**k), None where there is none."""
+    return None if rotation is None else _site_rotation(rotation, sites, dimension)
+
+
+def sorted_sites(sites: tuple[int, ...]) -> tuple[int, ...]:
+    """Sites in ascending order."""
+    return tuple(sorted(int(site) for site in sites))
 
 
 def _cleaned(matrix: np.ndarray) -> np.ndarray:

@@ -19,6 +19,8 @@ __all__ = ["Probe", "probe_kernel", "smooth_start"]
 
 ACCURACIES = (1e-4, 1e-7, 1e-10)
 VANISHED = 0.02
+"""Share of what a random vector has along one direction below which a rest has vanished: a start of
+n entries has about ``1 / sqrt(n)`` of its length along any zero mode that is not few-body."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -102,15 +104,17 @@ def probe_kernel(
     def progress(value: float) -> None:
         tell(f"search for further zero modes: {solver.applies - before} applications")
 
-    start = rest.copy()
-    for accuracy in ACCURACIES:
+    for accuracy in (*ACCURACIES, 0.0):
         image = solver.apply(rest)
-        if np.linalg.norm(image) <= zero * np.linalg.norm(rest):
+        length = float(np.linalg.norm(rest))
+        if np.linalg.norm(image) <= zero * length:
             break
-        target = max(accuracy * scale, zero / 10)
+        # What has not vanished by the last round is freed of decaying modes as far as a zero mode
+        # can be told from a slow one.
+        target = max(accuracy * scale, 0.3 * zero * length)
         solved = solver.solve(image, target, limit=limit, restart=restart, progress=progress)
         rest = _without(rest - solved.solution, known)
-        if np.linalg.norm(rest) < VANISHED * np.linalg.norm(start):
+        if np.linalg.norm(rest) < VANISHED / np.sqrt(rest.size):
             break
     rest /= np.linalg.norm(rest)
     separation = float(np.linalg.norm(solver.apply(rest)))
@@ -118,7 +122,7 @@ def probe_kernel(
         solved = solver.solve(rest, 0.1, limit=limit, restart=restart, progress=progress)
         slower = _without(solved.solution, known)
         length = float(np.linalg.norm(slower))
-        if length > 0:
+        if solved.converged and length > 0:
             rest = slower / length
             separation = float(np.linalg.norm(solver.apply(rest)))
     return Probe(rest, separation, solver.applies - before)

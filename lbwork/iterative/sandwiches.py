@@ -14,6 +14,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from lbwork import defaults
 from lbwork.errors import SymmetryError
 from lbwork.iterative.space import SectorSpace
 
@@ -151,6 +152,7 @@ def sandwiches(
     for sites, tensor in terms:
         size = tensor.shape[0]
         state, exchanged = local_states(space, sites, count, dimension)
+        tiny = defaults.SYMMETRY_TOLERANCE * float(np.abs(tensor).max(initial=0.0))
         for ket, bra in space.pairs:
             kets = np.arange(bounds[ket], bounds[ket + 1])
             bras = np.arange(bounds[bra], bounds[bra + 1])
@@ -167,7 +169,7 @@ def sandwiches(
                     source = exchanged[chosen, initial]
                     source_bra = bra_of.get(int(group_of[source[0]]), -1)
                     found = _column_list(
-                        weights, bras, state[bras], exchanged[bras], group_of, source_bra
+                        weights, bras, state[bras], exchanged[bras], group_of, source_bra, tiny
                     )
                     if found is None:
                         continue
@@ -202,6 +204,7 @@ def _column_list(
     exchanged: np.ndarray,
     group_of: np.ndarray,
     source_bra: int,
+    tiny: float,
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray] | None:
     """Target and source columns (sorted bras) with weights, for one local ket transition."""
     final, initial = np.nonzero(weights)
@@ -212,6 +215,8 @@ def _column_list(
             continue
         origin = exchanged[state == after, before]
         if int(group_of[origin[0]]) != source_bra:
+            if abs(weights[after, before]) <= tiny:
+                continue
             raise SymmetryError(
                 "a local term leads out of its charge sector; the charges found do not hold"
             )

@@ -36,11 +36,15 @@ class PlacedOperator:
 
 @dataclass(frozen=True, eq=False)
 class PlacedJump:
-    """A jump operator on given sites with its rate > 0; the matrix is read-only."""
+    """A jump operator on given sites with its rate > 0; the matrix is read-only.
+
+    ``number``: of the model's jump entry that it comes from, counted from 1.
+    """
 
     sites: tuple[int, ...]
     matrix: np.ndarray
     rate: float
+    number: int = 0
 
 
 @dataclass(frozen=True)
@@ -83,7 +87,7 @@ def place_jumps(chain: Chain, jumps: Sequence[Jump]) -> tuple[PlacedJump, ...]:
         for at in _spread(chain, jump, f"jump {number}"):
             rate = _rate(chain, jump, at, f"jump {number}: rate")
             if rate > 0 and at.matrix.any():
-                placed.append(PlacedJump(at.sites, at.matrix, rate))
+                placed.append(PlacedJump(at.sites, at.matrix, rate, number))
     return tuple(placed)
 
 

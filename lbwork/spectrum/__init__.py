@@ -4,7 +4,8 @@ from lbwork.spectrum.archive import sector_from_archive, sector_to_archive
 from lbwork.spectrum.cost import SectorCost, cost_estimate
 from lbwork.spectrum.full import full_spectrum, sector_spectrum
 from lbwork.spectrum.gap import spectral_gap
-from lbwork.spectrum.options import GapOptions
+from lbwork.spectrum.gap_cost import GapCost, gap_cost
+from lbwork.spectrum.options import GapOptions, gap_method
 from lbwork.spectrum.records import (
     GapResult,
     SectorSpectrum,
@@ -15,6 +16,7 @@ from lbwork.spectrum.records import (
 from lbwork.spectrum.scaling import GapScaling, gap_scaling
 
 __all__ = [
+    "GapCost",
     "GapOptions",
     "GapResult",
     "GapScaling",
@@ -25,6 +27,8 @@ __all__ = [
     "SpectrumOptions",
     "cost_estimate",
     "full_spectrum",
+    "gap_cost",
+    "gap_method",
     "gap_scaling",
     "sector_from_archive",
     "sector_spectrum",

@@ -15,8 +15,9 @@ from lbwork.generator import Lindbladian, doubled_to_vector
 from lbwork.model import Model
 from lbwork.spectrum.certificate import level_residual
 from lbwork.spectrum.edge import SectorEdge, sector_edge
+from lbwork.spectrum.gap_cost import gap_cost
 from lbwork.spectrum.nearest import nearest_gap
-from lbwork.spectrum.options import GapOptions, zero_tolerance
+from lbwork.spectrum.options import GapOptions, gap_method, zero_tolerance
 from lbwork.spectrum.parts import rounding_scale
 from lbwork.spectrum.populations import population_sectors
 from lbwork.spectrum.records import GapResult
@@ -113,11 +114,9 @@ def spectral_gap(
     options = options or GapOptions()
     chain = model if isinstance(model, Model) else model.model
     entries = chain.local_dimension ** (2 * chain.sites)
-    method = options.method
-    if method == "auto":
-        method = "exhaustive" if entries <= defaults.GAP_EXHAUSTIVE_SPACE else "nearest"
-    if method == "nearest":
+    if gap_method(chain, options) == "nearest":
         report = None if isinstance(model, Model) else model.symmetries
+        gap_cost(chain, options, report).require_fit(chain.sites)
         try:
             return nearest_gap(chain, options, report, tell or (lambda words: None))
         except NotCertifiedError as error:

@@ -12,11 +12,13 @@ from lbwork.errors import NotCertifiedError
 from lbwork.generator import Lindbladian
 from lbwork.iterative import (
     ChainEquations,
+    ClosedChain,
     NearestLevels,
     SectorSolver,
     SectorSpace,
     chain_equations,
     choose_resources,
+    closed_chain,
     component_matrix,
     dense_matrix,
     differences,
@@ -217,6 +219,9 @@ def nearest_gap(
     neutral = options.populations_only is not False
     with limited_threads(1):
         equations = chain_equations(model, symmetries)
+        closed = closed_chain(equations, zero)
+        if closed is not None:
+            return _closed_gap(model, closed, zero)
         parts = []
         for space, label, copies in _parts(equations, neutral):
             precision = choose_resources(space).precision
@@ -265,6 +270,27 @@ def nearest_gap(
             result,
         )
     return result
+
+
+def _closed_gap(model: Model, closed: ClosedChain, zero: float) -> GapResult:
+    """Without dissipation every level lies on the imaginary axis."""
+    oscillating = model.local_dimension ** (2 * model.sites) - closed.zero_modes
+    finite = np.isfinite(closed.smallest)
+    return GapResult(
+        gap=0.0,
+        eigenvalue=complex(0, closed.smallest) if finite else None,
+        zero_modes=closed.zero_modes,
+        oscillating_modes=oscillating,
+        residual=0.0,
+        residual_space="energies",
+        sector="no dissipation",
+        searched=("no dissipation",),
+        methods=("differences of energies",),
+        sector_gaps=(0.0 if finite else None,),
+        slow_modes=np.array([complex(0, closed.smallest)] if finite else [], dtype=complex),
+        tolerance=zero,
+        model=model,
+    )
 
 
 def _method(part: _PartLevels) -> str:

@@ -11,7 +11,7 @@ from lbwork.errors import UsageError
 from lbwork.generator import Lindbladian
 from lbwork.model import Model
 
-__all__ = ["GAP_METHODS", "GapOptions", "zero_tolerance"]
+__all__ = ["GAP_METHODS", "GapOptions", "gap_method", "zero_tolerance"]
 
 GAP_METHODS = ("auto", "exhaustive", "nearest")
 
@@ -38,6 +38,14 @@ class GapOptions:
     def __post_init__(self) -> None:
         if self.method not in GAP_METHODS:
             raise UsageError(f"method '{self.method}' is not one of {', '.join(GAP_METHODS)}")
+
+
+def gap_method(model: Model, options: GapOptions) -> str:
+    """``exhaustive`` or ``nearest``: what ``auto`` stands for at the size of this model."""
+    if options.method != "auto":
+        return options.method
+    entries = model.local_dimension ** (2 * model.sites)
+    return "exhaustive" if entries <= defaults.GAP_EXHAUSTIVE_SPACE else "nearest"
 
 
 def zero_tolerance(model: Model) -> float:

@@ -18,7 +18,8 @@ class GapScaling:
     """Power law through gaps at several lengths.
 
     exponent: z of ``gap = amplitude * L**-exponent``, least squares on logarithms. exponent_error:
-    largest change of z when one length is left out, None for two lengths. local_exponents: z
+    largest change of z when one length is left out, None for two lengths. fit_error: standard error
+    of z from the scatter about the line, None for two lengths. local_exponents: z
     between neighbouring lengths; a drift along them is the finite-size correction, which no error
     bar shows.
     """
@@ -28,6 +29,7 @@ class GapScaling:
     amplitude: float
     exponent: float
     exponent_error: float | None
+    fit_error: float | None
     local_exponents: tuple[float, ...]
 
     def to_dict(self) -> dict[str, Any]:
@@ -38,11 +40,17 @@ class GapScaling:
             "amplitude": self.amplitude,
             "exponent": self.exponent,
             "exponent_error": self.exponent_error,
+            "fit_error": self.fit_error,
             "local_exponents": list(self.local_exponents),
         }
 
     def __str__(self) -> str:
-        error = "" if self.exponent_error is None else f" +- {self.exponent_error:.2g}"
+        error = ""
+        if self.exponent_error is not None:
+            error = (
+                f" +- {self.fit_error:.2g} (scatter), +- {self.exponent_error:.2g} (leaving a "
+                "length out)"
+            )
         lines = [f"gap = {self.amplitude:.4g} * L^-z with z = {self.exponent:.4g}{error}"]
         lines += [
             f"  L = {size:<4d} {gap:.12g}" for size, gap in zip(self.sites, self.gaps, strict=True)
@@ -70,8 +78,12 @@ def gap_scaling(sites: Sequence[int], gaps: Sequence[float]) -> GapScaling:
     order = np.argsort(sites)
     lengths, values = np.array(sites, float)[order], np.array(gaps, float)[order]
     exponent, amplitude = _line(lengths, values)
-    error = None
+    error = scatter = None
     if lengths.size > 2:
+        offsets = np.log(lengths) - np.log(lengths).mean()
+        misfit = np.log(values) - np.log(amplitude) + exponent * np.log(lengths)
+        variance = float(np.sum(misfit**2)) / (lengths.size - 2)
+        scatter = float(np.sqrt(variance / np.sum(offsets**2)))
         others = [
             _line(np.delete(lengths, index), np.delete(values, index))[0]
             for index in range(lengths.size)
@@ -84,5 +96,6 @@ def gap_scaling(sites: Sequence[int], gaps: Sequence[float]) -> GapScaling:
         amplitude,
         exponent,
         error,
+        scatter,
         tuple(float(value) for value in local),
     )

@@ -132,14 +132,14 @@ def _joined_solver(equations: ChainEquations, space: SectorSpace, splitting: str
 def _same_spectrum(first: ComponentState, second: ComponentState) -> bool:
     """Whether two density matrices have the same non-zero eigenvalues."""
     # The purity tells most pairs apart without an eigenvalue.
-    purities = [float(np.vdot(state.vector, state.vector)) for state in (first, second)]
-    if not np.isclose(*purities, rtol=1e-6):
+    one, other = (float(np.vdot(state.vector, state.vector)) for state in (first, second))
+    if not np.isclose(one, other, rtol=1e-6):
         return False
-    one, other = (
+    weights, others = (
         np.sort(values[values > defaults.STEADY_POSITIVE])
         for values in (first.eigenvalues, second.eigenvalues)
     )
-    return one.size == other.size and bool(np.allclose(one, other, rtol=1e-5, atol=1e-9))
+    return weights.size == others.size and bool(np.allclose(weights, others, rtol=1e-5, atol=1e-9))
 
 
 def _open_sectors(

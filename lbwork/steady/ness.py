@@ -10,7 +10,13 @@ import numpy as np
 from lbwork import defaults
 from lbwork.errors import CapacityError, NotCertifiedError
 from lbwork.generator import Lindbladian
-from lbwork.iterative import chain_equations, component_matrix, make_hermitian
+from lbwork.iterative import (
+    ClosedChain,
+    chain_equations,
+    closed_chain,
+    component_matrix,
+    make_hermitian,
+)
 from lbwork.model import Model
 from lbwork.observables.currents import continuity_error, spin_currents
 from lbwork.observables.local import (
@@ -179,8 +185,12 @@ def _matrix_free_state(
     """Steady states from preconditioned Krylov iteration."""
     generator = Lindbladian(model)
     with limited_threads(1):
+        equations = chain_equations(model, None if plan is None else plan.symmetries)
+        closed = closed_chain(equations, zero_tolerance(model))
+        if closed is not None:
+            return _closed_state(generator, closed)
         found = iterative_states(
-            chain_equations(model, None if plan is None else plan.symmetries),
+            equations,
             splitting=None if options.splitting == "auto" else options.splitting,
             zero=zero_tolerance(model),
             tell=tell or (lambda words: None),
@@ -213,6 +223,21 @@ def _matrix_free_state(
         # Solver and vectors make room for the certificate.
         del found
         return certified_state(generator, density, tuple(branches), summary)
+
+
+def _closed_state(generator: Lindbladian, closed: ClosedChain) -> SteadyState:
+    """The maximally mixed state of a chain without dissipation, among its many steady states."""
+    size = generator.dimension
+    density = np.eye(size, dtype=complex) / size
+    summary = Finding(
+        closed.zero_modes,
+        "no dissipation: squares of the multiplicities of the energies",
+        closed.smallest,
+        "matrix-free",
+        eigenvalues=np.full(size, 1 / size),
+    )
+    branch = SteadyBranch("maximally mixed; every function of H is steady", density, 0.0, 1.0)
+    return certified_state(generator, density, (branch,), summary)
 
 
 def _component_names(found: IterativeStates) -> list[str]:

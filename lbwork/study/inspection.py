@@ -8,7 +8,8 @@ from typing import Any
 from lbwork.generator import GeneratorCertificate, Lindbladian
 from lbwork.model import Model
 from lbwork.provenance import usable_memory
-from lbwork.spectrum import SectorCost, cost_estimate
+from lbwork.spectrum import SectorCost, cost_estimate, gap_cost
+from lbwork.steady import steady_cost
 from lbwork.symmetry import SectorPlan, plan_sectors
 
 __all__ = ["Inspection", "TaskCost", "inspect_model"]
@@ -78,8 +79,15 @@ def _tasks(model: Model, plan: SectorPlan, costs: tuple[SectorCost, ...]) -> tup
     dimension = model.local_dimension**model.sites
     density = 16 * 6 * dimension**2
     spectrum = TaskCost("spectrum", total, largest, largest <= usable)
+    gap = gap_cost(model, None, plan.symmetries)
+    steady = steady_cost(model, plan.symmetries)
     audit = TaskCost("audit", 1.5 * total + 5, largest + density, largest + density <= usable)
-    return spectrum, audit
+    return (
+        spectrum,
+        TaskCost("gap", gap.seconds, gap.memory_bytes, gap.fits),
+        TaskCost("steady", steady.seconds, steady.memory_bytes, steady.fits),
+        audit,
+    )
 
 
 def inspect_model(model: Model) -> Inspection:

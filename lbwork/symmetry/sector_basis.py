@@ -10,14 +10,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
-import numba
 import numpy as np
-from quspin.basis.user import (
-    map_sig_64,
-    op_sig_64,
-    pre_check_state_sig_64,
-    user_basis,
-)
 
 from lbwork.errors import CapacityError
 from lbwork.symmetry.characters import GroupGenerator
@@ -25,52 +18,6 @@ from lbwork.symmetry.charges import Charge, ChargeLabel
 from lbwork.symmetry.monomials import MonomialMap
 
 __all__ = ["build_basis", "digits_of", "numbers_of", "require_numberable"]
-
-
-@numba.cfunc(map_sig_64)
-def _apply_monomial(
-    state: Any, sites: Any, sign_pointer: Any, tables: Any
-) -> Any:  # pragma: no cover
-    base = tables[0]
-    image = numba.uint64(0)
-    for position in range(sites):
-        site = sites - 1 - position
-        digit = state % base
-        state = state // base
-        row = 1 + sites + site * base + digit
-        image += tables[row] * tables[1 + site]
-        if tables[row + sites * base]:
-            sign_pointer[0] *= -1
-    return image
-
-
-@numba.cfunc(pre_check_state_sig_64)
-def _has_charges(state: Any, sites: Any, tables: Any) -> Any:  # pragma: no cover
-    base = tables[0]
-    count = tables[1]
-    for charge in range(count):
-        modulus = tables[2 + 2 * charge]
-        target = tables[3 + 2 * charge]
-        offset = 2 + 2 * count + charge * sites * base
-        rest = state
-        total = numba.uint64(0)
-        for position in range(sites):
-            site = sites - 1 - position
-            total += tables[offset + site * base + rest % base]
-            rest = rest // base
-        if modulus:
-            total = total % modulus
-        if total != target:
-            return False
-    return True
-
-
-@numba.cfunc(op_sig_64)
-def _number_operator(
-    result: Any, name: Any, site: Any, sites: Any, tables: Any
-) -> Any:  # pragma: no cover
-    numba.carray(result, 1)[0].matrix_ele *= 1.0
-    return 0
 
 
 def require_numberable(sites: int, base: int) -> None:
@@ -138,9 +85,17 @@ def build_basis(
     ``irrep`` holds one integer per generator: the eigenvalue is ``exp(2 pi i irrep / order)``.
     ``expected`` is the dimension known from characters, used to size the arrays.
     """
+    # Loading QuSpin and compiling its callbacks takes seconds that matrix-free work does not need.
+    from lbwork.symmetry.basis_callbacks import (
+        apply_monomial,
+        has_charges,
+        number_operator,
+        user_basis,
+    )
+
     blocks = {
         f"map_{index}": (
-            _apply_monomial,
+            apply_monomial,
             generator.order,
             int(value),
             _map_tables(generator.operation),
@@ -150,9 +105,9 @@ def build_basis(
     return user_basis(
         np.uint64,
         sites,
-        {"op": _number_operator, "op_args": np.array([base], dtype=np.uint64)},
+        {"op": number_operator, "op_args": np.array([base], dtype=np.uint64)},
         sps=base,
-        pre_check_state=(_has_charges, _filter_tables(charges, label, base)),
+        pre_check_state=(has_charges, _filter_tables(charges, label, base)),
         allowed_ops={"n"},
         Ns_block_est=int(expected * 1.05) + 64,
         block_order=list(blocks) or None,
