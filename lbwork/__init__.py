@@ -48,6 +48,7 @@ _HOMES = {
     "sector_spectrum": "lbwork.spectrum",
     "spectral_gap": "lbwork.spectrum",
     "steady_state": "lbwork.steady",
+    "counting_statistics": "lbwork.counting",
     "LevelSequence": "lbwork.levels",
     "judge_levels": "lbwork.levels",
     "level_statistics": "lbwork.levels",

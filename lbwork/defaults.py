@@ -228,11 +228,17 @@ ITERATIVE_COUNT_DIMENSION: Final = 1100
 ITERATIVE_DENSE_SIZE: Final = 600
 """Components up to this size are solved densely."""
 
-PROCESS_BYTES: Final = 240_000_000
-"""Resident size of a process that has loaded the package."""
+PROCESS_BYTES: Final = 190_000_000
+SECTOR_PROCESS_BYTES: Final = 240_000_000
+"""Resident size of a process that has loaded the package, without and with sector bases."""
 
-PLAN_SECONDS: Final = 0.8
+PLAN_SECONDS: Final = 0.5
 """Finding the symmetries, trying splittings on short chains, loading compiled loops."""
+
+SECTOR_SECONDS: Final = 0.03
+SEARCH_SECONDS: Final = 1e-3
+SEARCH_BYTES: Final = 5000
+"""Exhaustive gap: assembling a sector, and per state of a large sector the Krylov search."""
 
 LOCAL_SECONDS: Final = 1.6e-9
 PASS_SECONDS: Final = 1.2e-8

@@ -36,6 +36,19 @@ class GapCost:
             )
 
 
+def _exhaustive(model: Model, options: GapOptions) -> tuple[int, float]:
+    """Bytes and seconds of searching every sector: dense up to a size, a Krylov search beyond."""
+    plan = plan_sectors(model)
+    seconds, largest = defaults.PLAN_SECONDS, 0
+    for sector, cost in zip(plan.sectors, cost_estimate(plan), strict=True):
+        dense = sector.dimension <= options.dense_dimension
+        seconds += defaults.SECTOR_SECONDS
+        seconds += cost.seconds if dense else defaults.SEARCH_SECONDS * sector.dimension
+        bytes_needed = cost.memory_bytes if dense else defaults.SEARCH_BYTES * sector.dimension
+        largest = max(largest, bytes_needed)
+    return defaults.SECTOR_PROCESS_BYTES + largest, seconds
+
+
 def gap_cost(
     model: Model, options: GapOptions | None = None, symmetries: SymmetryReport | None = None
 ) -> GapCost:
@@ -47,11 +60,8 @@ def gap_cost(
     if 2 * dense > usable:
         return GapCost(2 * dense, float("inf"), method, False)
     if method == "exhaustive":
-        costs = cost_estimate(plan_sectors(model))
-        largest = max(cost.memory_bytes for cost in costs)
-        seconds = sum(min(cost.seconds, 60.0) for cost in costs)
-        memory = defaults.PROCESS_BYTES + largest
-        return GapCost(memory, defaults.PLAN_SECONDS + seconds, method, memory <= usable)
+        memory, seconds = _exhaustive(model, options)
+        return GapCost(memory, seconds, method, memory <= usable)
     equations = chain_equations(model, symmetries)
     space = whole_space(equations.groups)
     work = iteration_cost(equations, space)

@@ -19,6 +19,7 @@ __all__ = ["apply_monomial", "has_charges", "number_operator", "user_basis"]
 def apply_monomial(
     state: Any, sites: Any, sign_pointer: Any, tables: Any
 ) -> Any:  # pragma: no cover
+    """Image of a basis state under a monomial operation; the sign is multiplied in."""
     base = tables[0]
     image = numba.uint64(0)
     for position in range(sites):
@@ -34,6 +35,7 @@ def apply_monomial(
 
 @numba.cfunc(pre_check_state_sig_64)
 def has_charges(state: Any, sites: Any, tables: Any) -> Any:  # pragma: no cover
+    """Whether a basis state has the charges of the sector."""
     base = tables[0]
     count = tables[1]
     for charge in range(count):
@@ -57,5 +59,6 @@ def has_charges(state: Any, sites: Any, tables: Any) -> Any:  # pragma: no cover
 def number_operator(
     result: Any, name: Any, site: Any, sites: Any, tables: Any
 ) -> Any:  # pragma: no cover
+    """The one operator that a user basis must have; it is never applied."""
     numba.carray(result, 1)[0].matrix_ele *= 1.0
     return 0

@@ -184,7 +184,7 @@ def test_local_maps_preserve_hermiticity_with_complex_entries():
 
 
 def test_components_follow_the_jumps():
-    """A closed bulk with dephasing keeps the ket's charge: one part for each; a drive joins them."""
+    """Bulk dephasing keeps the ket's charge: one part for each; a drive joins them."""
     kept = Model(name="kept", sites=4, hamiltonian=(Term("X X + Y Y"),), jumps=(Jump("Z"),))
     for model, parts in ((kept, 5), (driven_chain(4), 1)):
         equations = chain_equations(model)
