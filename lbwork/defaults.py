@@ -316,3 +316,6 @@ SUBCHAIN_LISTED: Final = 8
 
 SUBCHAIN_RESIDUAL: Final = 1e-9
 """Largest residual of a stationary distribution and of the slowest level."""
+
+YANG_BAXTER_TOLERANCE: Final = 1e-9
+"""Largest relative residual of a relation of an R-matrix that holds."""

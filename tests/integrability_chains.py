@@ -32,9 +32,9 @@ def ring(
     """A spin-1/2 ring; what is zero is left out."""
     terms = []
     if jx or jy or jz:
-        terms.append(Term(f"{jx} X X + {jy} Y Y + {jz} Z Z", on="bonds"))
+        terms.append(Term(f"({jx}) X X + ({jy}) Y Y + ({jz}) Z Z", on="bonds"))
     if field_x or field_z:
-        terms.append(Term(f"{field_x} X + {field_z} Z", on="sites"))
+        terms.append(Term(f"({field_x}) X + ({field_z}) Z", on="sites"))
     if random_energy:
         terms.append(Term(RandomOperator("hermitian", 2, random_energy), on="bonds"))
     rates = {"Z": dephasing, "S-": loss, "S+": gain}
@@ -60,5 +60,5 @@ def spin_one_ring(bilinear, biquadratic):
         sites=3,
         local_dimension=3,
         boundary="periodic",
-        hamiltonian=(Term(f"{bilinear} {exchange} + ({biquadratic}) {exchange}^2", on="bonds"),),
+        hamiltonian=(Term(f"({bilinear}) {exchange} + ({biquadratic}) {exchange}^2", on="bonds"),),
     )

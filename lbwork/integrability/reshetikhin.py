@@ -4,7 +4,7 @@ With ``Q2 = sum_j q_{j,j+1}`` and ``Q3 = sum_j [q_{j,j+1}, q_{j+1,j+2}]`` one ha
 ``[Q2, Q3] = sum_j C_j`` with ``C = [q_12 + q_23, [q_12, q_23]]``. If q comes from an R-matrix that
 depends on the difference of its spectral parameters, the sum vanishes: C telescopes,
 ``C = A_12 - A_23`` (condition of N. Reshetikhin, as in P. Kulish, E. Sklyanin, Lect. Notes Phys.
-151, 61 (1982), from memory). If R depends on both parameters, ``Q3 + sum_j d_{j,j+1}`` commutes
+151, 61 (1982), from memory). If R depends on both parameters, ``Q3 - sum_j d_{j,j+1}`` commutes
 with Q2, where d is the derivative of q along the spectral parameter (M. de Leeuw, C. Paletta,
 A. Pribytok, A. Retore, P. Ryan, Phys. Rev. Lett. 125, 031604 (2020), from memory); d is solved for.
 """
@@ -39,7 +39,8 @@ class ReshetikhinResult:
     ``difference``: distance of C from telescoping operators. ``non_difference``: what is left of
     it when the derivative density is solved for. ``strength``: ``||C|| / ||q||**3``, norms over
     the root of the dimension; 0 when neighbouring densities commute, and then both residuals are 0.
-    ``derivative``: the shortest solution d, complex (n**2, n**2), in units of q**2.
+    ``derivative``: the shortest solution d, complex (n**2, n**2), in units of q**2: dq/du along the
+    spectral parameter, normalised so that ``q = P dR(u, v)/du`` at ``v = u``.
     ``freedom``: dimension of the solutions for C = 0, the conserved operators of range up to 2.
     """
 
@@ -149,7 +150,7 @@ def reshetikhin_residual(
     """Residuals of both conditions for a model's generator or any two-site density.
 
     ``difference = min_A ||C - (A_12 - A_23)|| / ||C||`` and
-    ``non_difference = min_{A, d} ||C + [q_12, d_12 + d_23] + [q_23, d_12] - (A_12 - A_23)|| /
+    ``non_difference = min_{A, d} ||C - [q_12, d_12 + d_23] - [q_23, d_12] - (A_12 - A_23)|| /
     ||C||`` with Frobenius norms on three sites and q without identity and telescoping parts. Both
     are the same for ``c q``, ``q + 1``, ``q + A x 1 - 1 x A``, ``(w x w) q (w x w)^dag`` and the
     mirrored density. Arguments and errors as in
@@ -173,7 +174,7 @@ def reshetikhin_residual(
     spread.data = spread.data * weights[spread.row]
     target *= weights
     factors = factored(spread.tocsc())
-    solution, residual = (part.ravel() for part in factors.solve(-target[:, None]))
+    solution, residual = (part.ravel() for part in factors.solve(target[:, None]))
     commuting = norm < defaults.RESHETIKHIN_COMMUTING
     ranged = leading > defaults.RESHETIKHIN_COMMUTING
     if not ranged:

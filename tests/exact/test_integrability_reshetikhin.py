@@ -130,7 +130,7 @@ def test_closed_generator_and_hamiltonian_have_the_same_residuals():
 
 
 def test_derivative_density_completes_the_third_charge():
-    """``[Q2, Q3 + D] = 0`` on a ring of four sites, with dense matrices."""
+    """``[Q2, Q3 - D] = 0`` on a ring of four sites, with dense matrices."""
     result = reshetikhin_residual(ring(jx=1.0, jy=1.0, dephasing=0.5))
     matrix, sites = local_density(ring(jx=1.0, jy=1.0, dephasing=0.5)).matrix, 4
     whole = np.zeros((4**sites, 4**sites), dtype=complex)
@@ -138,7 +138,7 @@ def test_derivative_density_completes_the_third_charge():
     one = np.eye(4)
     inner = np.kron(matrix, one) @ np.kron(one, matrix)
     inner -= np.kron(one, matrix) @ np.kron(matrix, one)
-    triple = inner + np.kron(result.derivative, one)
+    triple = inner - np.kron(result.derivative, one)
     shift = np.arange(4**sites).reshape((4,) * sites).transpose(1, 2, 3, 0).ravel()
     bond, part = np.kron(matrix, np.eye(16)), np.kron(triple, np.eye(4))
     for _ in range(sites):
