@@ -259,6 +259,9 @@ CERTIFICATE_SECONDS: Final = 1.2e-8
 COUNTING_TOLERANCE: Final = 1e-11
 """Relative residual of the equations behind the cumulants."""
 
+SCHMIDT_TOLERANCE: Final = 1e-12
+"""Schmidt weights of a normalised operator below this are not counted in its rank."""
+
 CONSERVATION_TOLERANCE: Final = 1e-12
 """A term conserves the magnetisation when it changes it by less than this times its norm."""
 

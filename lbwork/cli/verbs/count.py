@@ -80,7 +80,7 @@ def run(
     cost = steady_cost(chosen)
     cost.require_fit(chosen.sites)
     say(
-        f"{chosen}: about {human_seconds((4 + 3 * len(values)) * cost.seconds)} and "
+        f"{chosen}: expected time {human_seconds((4 + 3 * len(values)) * cost.seconds)}, memory "
         f"{human_bytes(cost.memory_bytes)}"
     )
     with progress("counting", 1) as tell:

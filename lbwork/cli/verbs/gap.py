@@ -57,8 +57,8 @@ def run(
         cost = gap_cost(chosen, options)
         cost.require_fit(chosen.sites)
         say(
-            f"{chosen}: {cost.method} search, about {human_seconds(cost.seconds)} and "
-            f"{human_bytes(cost.memory_bytes)}"
+            f"{chosen}: {cost.method} search, expected time {human_seconds(cost.seconds)}, "
+            f"memory {human_bytes(cost.memory_bytes)}"
         )
         with progress("gap", 1) as tell:
             result = spectral_gap(chosen, options=options, tell=lambda words: tell(0, words))
