@@ -262,6 +262,12 @@ COUNTING_TOLERANCE: Final = 1e-11
 SCHMIDT_TOLERANCE: Final = 1e-12
 """Schmidt weights of a normalised operator below this are not counted in its rank."""
 
+RELAXATION_ORDER: Final = 24
+"""Krylov vectors of one time step."""
+
+RELAXATION_TOLERANCE: Final = 1e-11
+"""Frobenius error per unit of time over the length of the initial operator."""
+
 CONSERVATION_TOLERANCE: Final = 1e-12
 """A term conserves the magnetisation when it changes it by less than this times its norm."""
 
@@ -322,3 +328,12 @@ SUBCHAIN_RESIDUAL: Final = 1e-9
 
 YANG_BAXTER_TOLERANCE: Final = 1e-9
 """Largest relative residual of a relation of an R-matrix that holds."""
+
+FLOW_ORDERS: Final = 20
+"""Orders of the power series of an R-matrix that is integrated from a density."""
+
+FLOW_DIMENSION: Final = 6
+"""States per site up to which an R-matrix is integrated from a density."""
+
+FLOW_TOLERANCE: Final = 1e-9
+"""Largest relative residual of each order, and of the Yang-Baxter relation of the result."""
