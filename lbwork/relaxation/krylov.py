@@ -50,7 +50,7 @@ class Propagator:
         fits = int(usable_memory() // (2 * vector)) - 2
         if fits < 4:
             raise CapacityError(
-                f"a Krylov basis of vectors of {vector / 2**30:.1f} GiB does not fit; use fewer sites"
+                f"Krylov vectors of {vector / 2**30:.1f} GiB do not fit; use fewer sites"
             )
         self._order = min(defaults.RELAXATION_ORDER, fits, self.size)
         self._step = 0.5 * self._order / max(self.norm, 1e-300)

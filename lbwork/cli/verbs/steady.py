@@ -67,7 +67,8 @@ def run(
     cost.require_fit(chosen.sites)
     references = {words: state_from_words(chosen, words) for words in against or ()}
     say(
-        f"{chosen}: expected time {human_seconds(cost.seconds)}, memory {human_bytes(cost.memory_bytes)}"
+        f"{chosen}: expected time {human_seconds(cost.seconds)}, "
+        f"memory {human_bytes(cost.memory_bytes)}"
     )
     with progress("steady state", 1) as tell:
         result = steady_state(chosen, options=options, tell=lambda words: tell(0, words))
