@@ -4,6 +4,7 @@ from lbwork.integrability.charge_records import ConservedCharge, ConservedCharge
 from lbwork.integrability.charges import conserved_charges
 from lbwork.integrability.density import LocalDensity, hamiltonian_density, local_density
 from lbwork.integrability.finite_checks import FiniteCheck, check_charge
+from lbwork.integrability.flow import RMatrixFlow, r_matrix_flow
 from lbwork.integrability.markov_chain import MarkovSolution
 from lbwork.integrability.nearly_conserved import NearlyConserved, nearly_conserved
 from lbwork.integrability.r_matrix import RMatrix, load_r_matrix, r_matrix_from_toml
@@ -20,6 +21,7 @@ __all__ = [
     "MarkovSolution",
     "NearlyConserved",
     "RMatrix",
+    "RMatrixFlow",
     "ReshetikhinResult",
     "YangBaxterReport",
     "check_charge",
@@ -29,6 +31,7 @@ __all__ = [
     "load_r_matrix",
     "local_density",
     "nearly_conserved",
+    "r_matrix_flow",
     "r_matrix_from_toml",
     "reshetikhin_residual",
     "yang_baxter_residual",

@@ -15,7 +15,15 @@ from lbwork import defaults
 from lbwork.errors import CapacityError
 from lbwork.integrability.strings import CommutatorTable
 
-__all__ = ["canonical_codes", "canonical_weights", "commutator", "digits_of", "string_ranges"]
+__all__ = [
+    "canonical_codes",
+    "canonical_sum",
+    "canonical_weights",
+    "commutator",
+    "digits_of",
+    "shared_fields",
+    "string_ranges",
+]
 
 
 def digits_of(codes: np.ndarray, base: int, width: int) -> np.ndarray:
@@ -41,6 +49,29 @@ def canonical_codes(codes: np.ndarray, base: int, width: int) -> np.ndarray:
             break
         shifted[late] *= base
     return shifted
+
+
+def canonical_sum(tensor: np.ndarray, base: int) -> tuple[np.ndarray, np.ndarray]:
+    """Canonical codes over three sites, sorted, and coefficients of ``sum_j`` of a tensor."""
+    flat = tensor.ravel()
+    present = np.flatnonzero(np.abs(flat) > 1e-16)
+    present = present[present > 0]
+    codes, inverse = np.unique(canonical_codes(present, base, 3), return_inverse=True)
+    values = np.zeros(codes.size, dtype=complex)
+    np.add.at(values, inverse, flat[present])
+    return codes, values
+
+
+def shared_fields(canonical: np.ndarray, base: int) -> np.ndarray:
+    """Tensor (base, base) from the coefficients of the codes base .. base**2 - 1.
+
+    One-site strings stand for a field, which is shared equally between both sites.
+    """
+    tensor = np.zeros((base, base), dtype=complex)
+    tensor[1:] = canonical.reshape(base - 1, base)
+    tensor[1:, 0] *= 0.5
+    tensor[0, 1:] = tensor[1:, 0]
+    return tensor
 
 
 def canonical_weights(codes: np.ndarray, base: int, width: int) -> np.ndarray:

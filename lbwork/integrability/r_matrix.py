@@ -19,7 +19,7 @@ from lbwork.model.expressions import LocalOperator, evaluate
 from lbwork.model.files import parse_toml, read_toml
 from lbwork.model.words import nearest, shown
 
-__all__ = ["RMatrix", "load_r_matrix", "permutation", "r_matrix_from_toml"]
+__all__ = ["RMatrix", "ThreeSites", "load_r_matrix", "permutation", "r_matrix_from_toml"]
 
 _KEYS = ("name", "description", "dimension", "parameters", "definitions", "entries")
 _POINTS = 16
@@ -30,6 +30,27 @@ def permutation(dimension: int) -> np.ndarray:
     """``P |a b> = |b a>``: float64 (n**2, n**2)."""
     one = np.eye(dimension**2).reshape((dimension,) * 4)
     return one.transpose(1, 0, 2, 3).reshape(dimension**2, dimension**2)
+
+
+@dataclass(frozen=True)
+class ThreeSites:
+    """Two-site operators (n**2, n**2) on three sites of n = ``dimension`` states."""
+
+    dimension: int
+
+    def first(self, matrix: np.ndarray) -> np.ndarray:
+        """On sites 1 and 2: (n**3, n**3)."""
+        return np.kron(matrix, np.eye(self.dimension))
+
+    def last(self, matrix: np.ndarray) -> np.ndarray:
+        """On sites 2 and 3: (n**3, n**3)."""
+        return np.kron(np.eye(self.dimension), matrix)
+
+    def outer(self, matrix: np.ndarray) -> np.ndarray:
+        """On sites 1 and 3: (n**3, n**3)."""
+        n = self.dimension
+        tensor = np.kron(matrix, np.eye(n)).reshape((n,) * 6)
+        return tensor.transpose(0, 2, 1, 3, 5, 4).reshape(n**3, n**3)
 
 
 @dataclass(frozen=True, eq=False)

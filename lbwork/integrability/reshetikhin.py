@@ -13,17 +13,17 @@ from __future__ import annotations
 
 import html
 from dataclasses import dataclass
-from functools import reduce
 from typing import Any
 
 import numpy as np
+import scipy.sparse as sparse
 
 from lbwork import defaults
 from lbwork.integrability.commutators import (
-    canonical_codes,
+    canonical_sum,
     canonical_weights,
     commutator,
-    digits_of,
+    shared_fields,
 )
 from lbwork.integrability.density import LocalDensity, local_density
 from lbwork.integrability.least_squares import factored
@@ -133,17 +133,6 @@ def _nested(density: LocalDensity) -> tuple[np.ndarray, np.ndarray]:
     return density.basis.coefficients(inner), density.basis.coefficients(nested)
 
 
-def _canonical(tensor: np.ndarray, base: int) -> tuple[np.ndarray, np.ndarray]:
-    """Canonical codes over three sites and coefficients of a translation-summed tensor."""
-    flat = tensor.ravel()
-    present = np.flatnonzero(np.abs(flat) > 1e-16)
-    present = present[present > 0]
-    codes, inverse = np.unique(canonical_codes(present, base, 3), return_inverse=True)
-    values = np.zeros(codes.size, dtype=complex)
-    np.add.at(values, inverse, flat[present])
-    return codes, values
-
-
 def reshetikhin_residual(
     source: Model | LocalDensity | np.ndarray, *, doubled: bool | None = None
 ) -> ReshetikhinResult:
@@ -161,32 +150,26 @@ def reshetikhin_residual(
     size = density.basis.size
     inner, nested = _nested(density)
     norm, leading = float(np.linalg.norm(nested)), float(np.linalg.norm(inner[1:, :, 1:]))
-    codes, values = _canonical(nested, size)
+    codes, values = canonical_sum(nested, size)
     pairs = np.arange(size, size**2)
     rows, columns = commutator(density.table, pairs, 2)
-    every = reduce(np.union1d, (rows, codes))
+    every = np.union1d(rows, codes)
     weights = canonical_weights(every, size, 3)
     target = np.zeros(every.size, dtype=complex)
     target[np.searchsorted(every, codes)] = values
-    spread = columns.tocoo()
-    spread.resize((every.size, pairs.size))
-    spread.row = np.searchsorted(every, rows)[columns.tocoo().row]
-    spread.data = spread.data * weights[spread.row]
+    entries = columns.tocoo()
+    place = np.searchsorted(every, rows)[entries.row]
+    weighted = sparse.csc_matrix(
+        (entries.data * weights[place], (place, entries.col)), shape=(every.size, pairs.size)
+    )
     target *= weights
-    factors = factored(spread.tocsc())
+    factors = factored(weighted)
     solution, residual = (part.ravel() for part in factors.solve(target[:, None]))
     commuting = norm < defaults.RESHETIKHIN_COMMUTING
     ranged = leading > defaults.RESHETIKHIN_COMMUTING
     if not ranged:
         solution, residual = np.zeros_like(solution), target
-    derivative = np.zeros(size**2, dtype=complex)
-    derivative[pairs] = solution
-    digits = digits_of(pairs, size, 2)
-    # One-site strings stand for a field: share it between both sites, as in the density.
-    tensor = derivative.reshape(size, size)
-    single = pairs[digits[:, 1] == 0] // size
-    tensor[single, 0] *= 0.5
-    tensor[0, single] = tensor[single, 0]
+    tensor = shared_fields(solution, size)
     return ReshetikhinResult(
         density=density,
         difference=0.0 if commuting else float(np.linalg.norm(target)) / norm,

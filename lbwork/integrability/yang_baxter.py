@@ -25,7 +25,7 @@ import numpy as np
 from lbwork import defaults
 from lbwork.errors import UsageError
 from lbwork.integrability.density import LocalDensity, local_density
-from lbwork.integrability.r_matrix import RMatrix, permutation
+from lbwork.integrability.r_matrix import RMatrix, ThreeSites, permutation
 from lbwork.model import Model
 
 __all__ = ["Relation", "YangBaxterReport", "yang_baxter_residual"]
@@ -125,24 +125,6 @@ def _off_direction(matrix: np.ndarray, direction: np.ndarray) -> float:
     return float(np.linalg.norm(matrix - part * direction)) / max(size, 1e-300)
 
 
-@dataclass(frozen=True, eq=False)
-class _Sites:
-    """Embeddings of two-site operators on three sites."""
-
-    dimension: int
-
-    def first(self, matrix: np.ndarray) -> np.ndarray:
-        return np.kron(matrix, np.eye(self.dimension))
-
-    def last(self, matrix: np.ndarray) -> np.ndarray:
-        return np.kron(np.eye(self.dimension), matrix)
-
-    def outer(self, matrix: np.ndarray) -> np.ndarray:
-        n = self.dimension
-        tensor = np.kron(matrix, np.eye(n)).reshape((n,) * 6)
-        return tensor.transpose(0, 2, 1, 3, 5, 4).reshape(n**3, n**3)
-
-
 def yang_baxter_residual(
     r_matrix: RMatrix | Callable[[complex, complex], np.ndarray],
     source: Model | LocalDensity | np.ndarray | None = None,
@@ -189,7 +171,7 @@ def yang_baxter_residual(
 def _check_point(
     r_matrix: RMatrix, u: complex, v: complex, w: complex, note: Callable[[str, float], None]
 ) -> None:
-    sites, swap = _Sites(r_matrix.dimension), permutation(r_matrix.dimension)
+    sites, swap = ThreeSites(r_matrix.dimension), permutation(r_matrix.dimension)
     if _off_direction(r_matrix(u, u), np.eye(swap.shape[0])) < defaults.YANG_BAXTER_TOLERANCE:
         raise UsageError(
             f"R-matrix '{r_matrix.name}' is the identity at equal parameters, the braid form; "
