@@ -84,7 +84,7 @@ def human_seconds(seconds: float) -> str:
 def progress(title: str, total: float) -> Iterator[Callable[[float, str], None]]:
     """A progress bar on stderr: call it with (amount done, what is being done).
 
-    On a terminal a live bar; elsewhere a line every few seconds, so that logs stay readable.
+    On a terminal a live bar; elsewhere a line after two seconds and every five, so that logs stay readable.
     """
     if sys.stderr.isatty():
         bar = Progress(
@@ -104,7 +104,7 @@ def progress(title: str, total: float) -> Iterator[Callable[[float, str], None]]
     def line(done: float, what: str) -> None:
         nonlocal last
         now = time.monotonic()
-        if now - last >= 5:
+        if now - last >= (2 if last == started else 5):
             last = now
             say(f"{title}: {done:.0f} of {total:.0f} after {human_seconds(now - started)}; {what}")
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+import numba
 import numpy as np
 import scipy.linalg
 import scipy.sparse as sparse
@@ -12,6 +13,10 @@ from lbwork.iterative.action import sorted_operator
 from lbwork.iterative.kernels import divide_complex, divide_real
 from lbwork.iterative.products import multiply
 from lbwork.iterative.space import SectorSpace, hermitian_from_real, real_from_hermitian
+from lbwork.provenance import limited_threads
+
+THREADED = 1000
+"""Dimension from which an eigen-decomposition is worth a second thread."""
 
 __all__ = ["EnergyBasis", "HamiltonianResolvent", "energy_basis"]
 
@@ -50,7 +55,9 @@ def energy_basis(
         inside = slice(bounds[group], bounds[group + 1])
         block = ordered[inside, inside].toarray()
         block = block.real.copy() if real else block
-        values, columns = scipy.linalg.eigh(block, driver="evd", overwrite_a=True)
+        # No compiled loop runs meanwhile, so BLAS may have the threads.
+        with limited_threads(numba.get_num_threads() if block.shape[0] > THREADED else 1):
+            values, columns = scipy.linalg.eigh(block, driver="evd", overwrite_a=True)
         energies.append(values)
         vectors.append(np.ascontiguousarray(columns, dtype=kind))
     return EnergyBasis(tuple(energies), tuple(vectors))

@@ -48,7 +48,8 @@ def smooth_start(solver: SectorSolver, seed: int) -> np.ndarray:
         smooth = solver.precondition(noise)
         return np.asarray(noise + smooth / np.linalg.norm(smooth)) / 2
     smooth = _few_body(solver, generator)
-    smooth = smooth + solver.apply(smooth) / max(np.linalg.norm(solver.apply(smooth)), 1e-300)
+    image = solver.apply(smooth)
+    smooth = smooth + image / max(float(np.linalg.norm(image)), 1e-300)
     noise /= np.linalg.norm(noise)
     size = float(np.linalg.norm(smooth))
     total = noise + (smooth / size if size > 0 else 0)
@@ -56,18 +57,19 @@ def smooth_start(solver: SectorSolver, seed: int) -> np.ndarray:
 
 
 def _few_body(solver: SectorSolver, generator: np.random.Generator) -> np.ndarray:
+    """A random sum of diagonal operators on one and two sites, of unit length."""
     space = solver.space
     sites, dimension = solver.sites, solver.dimension
     vector = np.zeros(space.size)
+    # The same weights in every block: one operator on the whole chain.
+    weights = generator.normal(size=(sites, dimension))
+    pairs = generator.normal(size=(sites, sites))
     for block, (ket, bra) in zip(space.blocks(vector), space.pairs, strict=True):
         if ket != bra:
             continue
         states = space.kets(ket)
         powers = dimension ** np.arange(sites - 1, -1, -1)
         digits = (states[:, None] // powers) % dimension
-        # The same weights in every block, whatever their order.
-        weights = np.random.default_rng(17).normal(size=(sites, dimension))
-        pairs = np.random.default_rng(19).normal(size=(sites, sites))
         values = weights[np.arange(sites), digits]
         np.fill_diagonal(
             block, values.sum(axis=1) + np.einsum("ni,ij,nj->n", values, pairs, values)

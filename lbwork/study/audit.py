@@ -58,7 +58,7 @@ class Audit:
         if self.gap is not None:
             lines.append(
                 f"Liouvillian gap {self.gap.gap:.8g} with {self.gap.zero_modes} zero mode(s) over "
-                f"{len(self.gap.searched)} sector(s)."
+                f"{len(self.gap.searched)} sector(s): {self.gap.scope}."
             )
         if self.steady is not None:
             lines.append(
