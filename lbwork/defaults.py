@@ -299,6 +299,9 @@ CHARGES_STRINGS: Final = 1_100_000
 CHARGES_LISTED: Final = 64
 """Spaces of conserved operators up to this dimension are given a readable basis."""
 
+CHARGES_TERMS: Final = 500_000
+"""Coefficients, all operators together, up to which a space is given a readable basis."""
+
 CHARGES_RESIDUAL: Final = 1e-9
 """Largest ||[Q, A]|| / (||q|| ||A||) of a conserved operator."""
 

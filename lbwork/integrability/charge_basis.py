@@ -19,6 +19,9 @@ from lbwork.integrability.strings import StringBasis
 
 __all__ = ["CleanVector", "clean_basis"]
 
+_NOISE = 1e-12
+"""Coefficients of a finished vector below this times its largest are rounding errors."""
+
 _ZERO = 1e-9
 """Coefficients below this, relative to the largest of an orthonormal basis, are zero."""
 
@@ -170,7 +173,7 @@ def _named_vector(
     """Coefficients of the named on-site operators, the first of the largest ones set to 1."""
     values = vector / factors
     size = float(np.abs(values).max())
-    kept = np.abs(values) > _ZERO * size
+    kept = np.abs(values) > _NOISE * size
     codes, values = codes[kept], values[kept]
     first = int(np.flatnonzero(np.abs(values) > 0.999 * size)[0])
     values = values / values[first]

@@ -18,6 +18,7 @@ from lbwork.integrability.charge_records import ConservedCharge, ConservedCharge
 from lbwork.integrability.commutators import commutator, digits_of
 from lbwork.integrability.density import LocalDensity, local_density
 from lbwork.integrability.elimination import null_space
+from lbwork.integrability.frames import Frame, sparsest_frame
 from lbwork.integrability.leading_parts import EndMaps, charges_from_leading_parts, end_maps
 from lbwork.integrability.string_vectors import StringVectors, commuted
 from lbwork.model import Model
@@ -64,15 +65,24 @@ def conserved_charges(
         _check_count(density, max_range)
     spaces, methods = [], []
     kept, rejected, residual = 0.0, 1.0, 0.0
+    frame: Frame | None = None
     for length in range(1, max_range + 1):
-        space, used, margin = _space(density, maps, length)
+        space, used, margin = _space(density, maps, frame, length)
         if space.columns:
-            residual = max(residual, float(np.max(commuted(density.table, space).norms)))
+            table = density.table if frame is None else frame.density.table
+            residual = max(residual, float(np.max(commuted(table, space).norms)))
+        if frame is not None and space.columns <= defaults.CHARGES_LISTED:
+            space = frame.returned(space)
+        if length == 1 and maps is None:
+            frame = sparsest_frame(density, space)
         kept, rejected = max(kept, margin[0]), min(rejected, margin[1])
         spaces.append(space)
         methods.append(used)
     dimensions = tuple(space.columns for space in spaces)
-    listed = sum(1 for dimension in dimensions if dimension <= defaults.CHARGES_LISTED)
+    listed = sum(
+        space.columns <= defaults.CHARGES_LISTED and space.values.nnz <= defaults.CHARGES_TERMS
+        for space in spaces
+    )
     vectors = clean_basis(spaces[:listed], density.basis, _named(density))
     charges = _records(density, vectors, spaces[0])
     result = ConservedCharges(
@@ -106,9 +116,9 @@ def _check_count(density: LocalDensity, length: int) -> None:
 
 
 def _space(
-    density: LocalDensity, maps: EndMaps | None, length: int
+    density: LocalDensity, maps: EndMaps | None, frame: Frame | None, length: int
 ) -> tuple[StringVectors, str, tuple[float, float]]:
-    """Conserved operators of range up to ``length``, columns of norm one."""
+    """Conserved operators of range up to ``length``, columns of norm one, in the frame if any."""
     base = density.basis.size
     if maps is not None and length > 1:
         whole, parameters = charges_from_leading_parts(density, maps, length)
@@ -116,7 +126,8 @@ def _space(
         used = _METHODS[1]
     else:
         codes = np.arange(base ** (length - 1), base**length)
-        _, matrix = commutator(density.table, codes, length)
+        table = density.table if frame is None else frame.density.table
+        _, matrix = commutator(table, codes, length)
         parameters = null_space(matrix)
         entries = parameters.vectors.tocoo()
         space = StringVectors.summed(
