@@ -1,11 +1,11 @@
 """Which densities satisfy the Reshetikhin-type conditions, and by how much the others fail.
 
 The residuals are those of an earlier experiment with dense matrices, to two digits. It did not
-record all couplings and rates: those of the rows with a field, a loss, a gain or a coherent part beside
-hopping were chosen here so that both residuals agree. For XX + dephasing with and without field it
-gave the range 0.23 to 0.33 only; the figures within it were measured with this code. That XXX, XXZ,
-XYZ and XX + dephasing are integrable is in R. Baxter, Ann. Phys. 70, 323 (1972) and M. Medvedyeva,
-F. Essler, T. Prosen, Phys. Rev. Lett. 117, 137202 (2016).
+record all couplings and rates: those of the rows with a field, a loss, a gain or a coherent part
+beside hopping were chosen here so that both residuals agree. For XX + dephasing with and without
+field it gave the range 0.23 to 0.33 only; the figures within it were measured with this code. That
+XXX, XXZ, XYZ and XX + dephasing are integrable is in R. Baxter, Ann. Phys. 70, 323 (1972) and
+M. Medvedyeva, F. Essler, T. Prosen, Phys. Rev. Lett. 117, 137202 (2016).
 """
 
 import numpy as np
