@@ -43,7 +43,7 @@ class ChainEquations:
 
 def chain_equations(model: Model, symmetries: SymmetryReport | None = None) -> ChainEquations:
     """Find the charges of a model and write it in their basis."""
-    report = find_symmetries(model) if symmetries is None else symmetries
+    report = find_symmetries(model, charges_only=True) if symmetries is None else symmetries
     return ChainEquations(model, report, local_form(model, report.rotation), ket_groups(report))
 
 

@@ -107,13 +107,14 @@ def _constant(model: Model) -> complex:
     )
 
 
-def find_symmetries(model: Model) -> SymmetryReport:
+def find_symmetries(model: Model, *, charges_only: bool = False) -> SymmetryReport:
     """Find the symmetries of a model's generator by computation, and prove each numerically.
 
     Continuous on-site generators come from a linear solve, diagonal charges (all U(1) and cyclic
     ones) from integer algebra, reflections and on-site permutations from a search whose signs are
-    solved for; every one is compared with the generator term by term. Raises SymmetryError when
-    the generator does not preserve Hermiticity.
+    solved for; every one is compared with the generator term by term. With ``charges_only``
+    discrete and unresolved symmetries are not looked for (their search takes seconds for d > 2).
+    Raises SymmetryError when the generator does not preserve Hermiticity.
     """
     dimension = model.local_dimension
     ring = model.boundary == "periodic"
@@ -133,6 +134,19 @@ def find_symmetries(model: Model) -> SymmetryReport:
         raise SymmetryError(
             f"the generator does not preserve Hermiticity (mismatch {residual:.1e}); "
             "check that the Hamiltonian is Hermitian and the rates are real"
+        )
+    if charges_only:
+        return SymmetryReport(
+            model=model,
+            rotation=rotation,
+            terms=terms,
+            constant=_constant(model),
+            charges=find_charges(terms, dimension, sites, ring),
+            translation=None,
+            point=(),
+            transpositions=(),
+            hermiticity=DiscreteSymmetry("Hermiticity", hermiticity, residual),
+            unresolved=(),
         )
     translation = find_translation(terms, sites, base) if ring and terms else None
     site_centred = ring and (translation is None or translation.name != "translation")
