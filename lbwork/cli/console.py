@@ -84,7 +84,8 @@ def human_seconds(seconds: float) -> str:
 def progress(title: str, total: float) -> Iterator[Callable[[float, str], None]]:
     """A progress bar on stderr: call it with (amount done, what is being done).
 
-    On a terminal a live bar; elsewhere a line after two seconds and every five, so that logs stay readable.
+    On a terminal a live bar; elsewhere a line after two seconds and every five, so that logs stay
+    readable.
     """
     if sys.stderr.isatty():
         bar = Progress(
