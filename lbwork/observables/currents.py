@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from lbwork import defaults
+from lbwork.errors import UsageError
 from lbwork.generator import Lindbladian
 from lbwork.model import Model
 from lbwork.observables.local import local_magnetisation, reduced_density
@@ -97,7 +98,7 @@ def spin_currents(model: Model, density: np.ndarray) -> Currents:
 def continuity_error(generator: Lindbladian, density: np.ndarray, currents: Currents) -> float:
     """``max_j |d<m_j>/dt - (j_{j-1} - j_j + s_j)|``, the left side by applying L to the state."""
     if currents.current is None:
-        raise ValueError(f"no current to check: {currents.reason}")
+        raise UsageError(f"no current to check: {currents.reason}")
     model = generator.model
     count, dimension = model.sites, model.local_dimension
     change = np.diagonal(generator.apply(density)).real.reshape((dimension,) * count)

@@ -1,57 +1,20 @@
-"""Entropies of parts of the chain, operator-space entanglement and logarithmic negativity.
+"""Operator-space entanglement and logarithmic negativity of a state, per cut.
 
 Cut l lies between sites l and l + 1. All logarithms are natural.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
 
 from lbwork import defaults
-from lbwork.observables.blocks import block_eigenvalues, block_singular_values
+from lbwork.observables.blocks import block_eigenvalues, block_gram_eigenvalues
+from lbwork.observables.entropies import entropy_of_weights
 
-__all__ = [
-    "CutEntropies",
-    "entanglement_memory",
-    "left_entropies",
-    "logarithmic_negativity",
-    "operator_entanglement",
-    "renyi_two",
-]
+__all__ = ["logarithmic_negativity", "operator_entanglement", "schmidt_weights"]
 
-
-@dataclass(frozen=True, eq=False)
-class CutEntropies:
-    """Of the left part at each cut, float64 (L-1,): von Neumann entropy and second Renyi entropy
-    ``-ln tr rho_l^2``."""
-
-    von_neumann: np.ndarray
-    renyi_two: np.ndarray
-
-
-def renyi_two(density: np.ndarray) -> float:
-    """``-ln tr rho^2`` of a density matrix (D, D)."""
-    return -float(np.log(np.linalg.norm(density) ** 2))
-
-
-def _entropy(weights: np.ndarray) -> float:
-    kept = weights[weights > 0]
-    return max(-float(np.sum(kept * np.log(kept))), 0.0)
-
-
-def left_entropies(density: np.ndarray, count: int, dimension: int) -> CutEntropies:
-    """Entropies of sites 1..l of a density matrix (D, D) for l = 1..L-1."""
-    left = density
-    first, second = np.zeros(count - 1), np.zeros(count - 1)
-    for cut in range(count - 1, 0, -1):
-        size = dimension**cut
-        left = np.einsum("iaja->ij", left.reshape(size, dimension, size, dimension))
-        weights = block_eigenvalues(left)
-        first[cut - 1] = _entropy(weights)
-        second[cut - 1] = -float(np.log(np.sum(weights**2)))
-    return CutEntropies(first, second)
+_HERMITIAN = 1e-13
+_ROUNDING = float(np.finfo(float).eps)
 
 
 def _split(density: np.ndarray, cut: int, count: int, dimension: int) -> np.ndarray:
@@ -60,38 +23,75 @@ def _split(density: np.ndarray, cut: int, count: int, dimension: int) -> np.ndar
     return density.reshape(left, right, left, right)
 
 
+def _is_hermitian(matrix: np.ndarray) -> bool:
+    """To rounding, compared in strips so that the adjoint is never stored."""
+    bound = _HERMITIAN * float(np.abs(np.diagonal(matrix)).max(initial=0.0))
+    step = 256
+    return all(
+        np.abs(matrix[start : start + step] - matrix[:, start : start + step].conj().T).max()
+        <= bound
+        for start in range(0, len(matrix), step)
+    )
+
+
+def _schmidt_matrix(density: np.ndarray, cut: int, count: int, dimension: int) -> np.ndarray:
+    """``rho`` as a matrix from operators of the right part to those of the left part.
+
+    A Hermitian one is expanded in the Hermitian operators ``(1+i)/2 |a><b| + (1-i)/2 |b><a|``,
+    orthonormal with real coefficients; for both parts at once that is the real matrix
+    ``Im <ab|rho|a'b'> + Re <ab'|rho|a'b>`` with rows (a a') and columns (b b').
+    """
+    tensor = _split(density, cut, count, dimension)
+    left = dimension**cut
+    if not np.iscomplexobj(density):
+        return tensor.transpose(0, 2, 1, 3).reshape(left * left, -1)
+    if not _is_hermitian(density):
+        return tensor.transpose(0, 2, 1, 3).reshape(left * left, -1)
+    matrix = np.array(tensor.imag.transpose(0, 2, 1, 3), order="C")
+    matrix += tensor.real.transpose(0, 2, 3, 1)
+    return matrix.reshape(left * left, -1)
+
+
+def schmidt_weights(density: np.ndarray, cut: int, count: int, dimension: int) -> np.ndarray:
+    """Squared Schmidt coefficients of ``rho / ||rho||_F`` across one cut, descending, sum 1.
+
+    float64 (r,); those that vanish identically are left out. The absolute error is rounding.
+    ``density`` (D, D) may be any operator; Hermitian ones take a quarter of the time.
+    """
+    weights = block_gram_eigenvalues(_schmidt_matrix(density, cut, count, dimension))
+    weights = np.sort(np.clip(weights, 0, None))[::-1]
+    return np.asarray(weights / weights.sum())
+
+
 def operator_entanglement(
     density: np.ndarray, count: int, dimension: int
 ) -> tuple[np.ndarray, np.ndarray]:
-    """Entropy of the Schmidt weights of ``rho / ||rho||_F`` as a vector, and their number, per cut.
+    """``-sum p ln p`` of the Schmidt weights p of ``rho / ||rho||_F`` as a vector, and their
+    number, per cut: float64 (L-1,) and int64 (L-1,).
 
-    Weights below :data:`lbwork.defaults.SCHMIDT_TOLERANCE` are not counted (T. Prosen, I. Pizorn,
-    Phys. Rev. A 76, 032316 (2007); from memory). float64 (L-1,) and int64 (L-1,).
+    The vector lives on the doubled chain with d**2 states per site. The rank counts weights above
+    :data:`lbwork.defaults.SCHMIDT_TOLERANCE`. A product state has entropy 0 and rank 1; a pure
+    state has twice its entanglement entropy, in contrast to the negativity classical correlations
+    count as well. T. Prosen, I. Pizorn, Phys. Rev. A 76, 032316 (2007); from memory.
     """
     entropies, ranks = np.zeros(count - 1), np.zeros(count - 1, dtype=np.int64)
     for cut in range(1, count):
-        tensor = _split(density, cut, count, dimension).transpose(0, 2, 1, 3)
-        size = dimension ** (2 * cut)
-        weights = block_singular_values(tensor.reshape(size, -1)) ** 2
-        weights /= weights.sum()
-        entropies[cut - 1] = _entropy(weights)
+        weights = schmidt_weights(density, cut, count, dimension)
+        entropies[cut - 1] = entropy_of_weights(weights[weights > _ROUNDING])
         ranks[cut - 1] = int(np.sum(weights > defaults.SCHMIDT_TOLERANCE))
     return entropies, ranks
 
 
 def logarithmic_negativity(density: np.ndarray, count: int, dimension: int) -> np.ndarray:
-    """``ln ||rho^(T_left)||_1`` per cut, float64 (L-1,); zero for separable states.
+    """``ln ||rho^(T_left)||_1`` per cut, natural logarithm, float64 (L-1,).
 
-    G. Vidal, R. F. Werner, Phys. Rev. A 65, 032314 (2002); from memory.
+    The partial transpose exchanges ket and bra of sites 1..l of a density matrix (D, D). Zero for
+    separable states, ln 2 for a Bell pair. G. Vidal, R. F. Werner, Phys. Rev. A 65, 032314 (2002)
+    use the binary logarithm; from memory.
     """
     values = np.zeros(count - 1)
     for cut in range(1, count):
         tensor = _split(density, cut, count, dimension).transpose(2, 1, 0, 3)
-        weights = block_eigenvalues(tensor.reshape(density.shape))
+        weights = block_eigenvalues(tensor.reshape(density.shape), disposable=True)
         values[cut - 1] = max(float(np.log(np.sum(np.abs(weights)))), 0.0)
     return values
-
-
-def entanglement_memory(count: int, dimension: int) -> int:
-    """Bytes that the quantities of this module need besides the density matrix, without blocks."""
-    return 16 * 4 * dimension ** (2 * count)
