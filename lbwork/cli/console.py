@@ -71,6 +71,8 @@ def human_bytes(count: float) -> str:
 
 def human_seconds(seconds: float) -> str:
     """A duration in words, e.g. ``3 min 20 s``."""
+    if seconds == float("inf"):
+        return "too long"
     if seconds < 1:
         return "under 1 s"
     if seconds < 90:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import Any
 
@@ -17,7 +18,10 @@ __all__ = ["Inspection", "TaskCost", "inspect_model"]
 
 @dataclass(frozen=True)
 class TaskCost:
-    """Estimated time in seconds and peak memory in bytes of a task, and whether it fits."""
+    """Estimated time in seconds and peak memory in bytes of a task, and whether it fits.
+
+    ``seconds`` is infinite for tasks that are too large to be estimated.
+    """
 
     task: str
     seconds: float
@@ -28,7 +32,7 @@ class TaskCost:
         """A JSON document of the four fields."""
         return {
             "task": self.task,
-            "seconds": self.seconds,
+            "seconds": self.seconds if math.isfinite(self.seconds) else None,
             "memory_bytes": self.memory_bytes,
             "fits": self.fits,
         }

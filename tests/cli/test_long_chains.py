@@ -104,3 +104,11 @@ def test_mistakes_get_one_line(capsys, words, status, message):
     assert [line for line in lines if line.startswith("lbwork: ")] == lines[-1:]
     assert "Traceback" not in done.err
     assert done.out == ""
+
+
+def test_inspect_says_what_does_not_fit(capsys):
+    done = lbwork(capsys, "inspect", "xxz-driven", "--sites", 20, "--json")
+    assert done.status == 0
+    tasks = {task["task"]: task for task in done.document["tasks"]}
+    assert not tasks["steady"]["fits"] and tasks["steady"]["seconds"] is None
+    assert "too long" in lbwork(capsys, "inspect", "xxz-driven", "--sites", 20).out

@@ -49,7 +49,7 @@ def test_inspect(capsys):
     total = sum(item["dimension"] * item["multiplicity"] for item in document["sectors"])
     assert total == document["total_dimension"] == 4**4
     assert document["generator"]["certified"]
-    assert {task["task"] for task in document["tasks"]} == {"spectrum", "audit"}
+    assert {task["task"] for task in document["tasks"]} == {"spectrum", "gap", "steady", "audit"}
     assert "translation" in lbwork(capsys, "inspect", "xx-dephasing", "--sites", 4).out
 
 
