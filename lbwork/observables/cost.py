@@ -12,11 +12,11 @@ from lbwork.provenance import usable_memory
 
 __all__ = ["EntanglementCost", "entanglement_cost"]
 
-_COMPLEX_SECONDS = 8e-10
-_REAL_SECONDS = 3e-10
+_COMPLEX_SECONDS = 4.2e-10
+_REAL_SECONDS = 2.5e-10
 _PRODUCT_SECONDS = 1e-10
-_ENTRY_SECONDS = 4e-8
-"""One thread of a 2020s server core: eigenvalues of a complex and of a real matrix per n**3, real
+_ENTRY_SECONDS = 2e-8
+"""Measured on one core of a server: eigenvalues of a complex and of a real matrix per n**3, real
 matrix products per multiplication, and rearranging per entry of the density matrix."""
 
 

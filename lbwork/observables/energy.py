@@ -2,7 +2,8 @@
 
 The energy density ``e_j`` of site j is the sum of the Hamiltonian's terms whose first site is j: a
 one-site term of site j and the term of bond (j, j+1) both belong to ``e_j``; a term that wraps
-around a ring belongs to the site it starts from. With ``F_ik = i <[e_i, e_k]>``, the energy that
+around a ring belongs to the site it starts from. Terms that are Hermitian only together count with
+their Hermitian parts, whose sum is H. With ``F_ik = i <[e_i, e_k]>``, the energy that
 flows from density i to density k, which vanishes unless their terms overlap,
 
     ``d<e_j>/dt = J_(j-1) - J_j + s_j``
@@ -47,7 +48,7 @@ class EnergyCurrents:
 
 
 def _densities(model: Model) -> list[Piece]:
-    """Per site the sum of the terms that start there, on the sites of the longest one."""
+    """Per site the Hermitian sum of the terms that start there, on the sites of the longest."""
     terms: list[list[Piece]] = [[] for _ in range(model.sites)]
     for placed in model.placed_hamiltonian():
         terms[placed.sites[0]].append((placed.sites, placed.matrix))
@@ -59,7 +60,7 @@ def _densities(model: Model) -> list[Piece]:
         for where, matrix in pieces:
             rest = model.local_dimension ** (len(sites) - len(where))
             total += np.kron(matrix, np.eye(rest))
-        found.append((sites, total))
+        found.append((sites, (total + total.conj().T) / 2))
     return found
 
 

@@ -34,7 +34,9 @@ def _is_hermitian(matrix: np.ndarray) -> bool:
     )
 
 
-def _schmidt_matrix(density: np.ndarray, cut: int, count: int, dimension: int) -> np.ndarray:
+def _schmidt_matrix(
+    density: np.ndarray, cut: int, count: int, dimension: int, hermitian: bool
+) -> np.ndarray:
     """``rho`` as a matrix from operators of the right part to those of the left part.
 
     A Hermitian one is expanded in the Hermitian operators ``(1+i)/2 |a><b| + (1-i)/2 |b><a|``,
@@ -43,13 +45,19 @@ def _schmidt_matrix(density: np.ndarray, cut: int, count: int, dimension: int) -
     """
     tensor = _split(density, cut, count, dimension)
     left = dimension**cut
-    if not np.iscomplexobj(density):
-        return tensor.transpose(0, 2, 1, 3).reshape(left * left, -1)
-    if not _is_hermitian(density):
+    if not (hermitian and np.iscomplexobj(density)):
         return tensor.transpose(0, 2, 1, 3).reshape(left * left, -1)
     matrix = np.array(tensor.imag.transpose(0, 2, 1, 3), order="C")
     matrix += tensor.real.transpose(0, 2, 3, 1)
     return matrix.reshape(left * left, -1)
+
+
+def _weights(
+    density: np.ndarray, cut: int, count: int, dimension: int, hermitian: bool
+) -> np.ndarray:
+    matrix = _schmidt_matrix(density, cut, count, dimension, hermitian)
+    weights = np.sort(np.clip(block_gram_eigenvalues(matrix), 0, None))[::-1]
+    return np.asarray(weights / weights.sum())
 
 
 def schmidt_weights(density: np.ndarray, cut: int, count: int, dimension: int) -> np.ndarray:
@@ -58,9 +66,7 @@ def schmidt_weights(density: np.ndarray, cut: int, count: int, dimension: int) -
     float64 (r,); those that vanish identically are left out. The absolute error is rounding.
     ``density`` (D, D) may be any operator; Hermitian ones take a quarter of the time.
     """
-    weights = block_gram_eigenvalues(_schmidt_matrix(density, cut, count, dimension))
-    weights = np.sort(np.clip(weights, 0, None))[::-1]
-    return np.asarray(weights / weights.sum())
+    return _weights(density, cut, count, dimension, _is_hermitian(density))
 
 
 def operator_entanglement(
@@ -75,8 +81,9 @@ def operator_entanglement(
     count as well. T. Prosen, I. Pizorn, Phys. Rev. A 76, 032316 (2007); from memory.
     """
     entropies, ranks = np.zeros(count - 1), np.zeros(count - 1, dtype=np.int64)
+    hermitian = _is_hermitian(density)
     for cut in range(1, count):
-        weights = schmidt_weights(density, cut, count, dimension)
+        weights = _weights(density, cut, count, dimension, hermitian)
         entropies[cut - 1] = entropy_of_weights(weights[weights > _ROUNDING])
         ranks[cut - 1] = int(np.sum(weights > defaults.SCHMIDT_TOLERANCE))
     return entropies, ranks
