@@ -22,7 +22,7 @@ from lbwork.iterative.solver import SectorSolver
 __all__ = ["NearestLevels", "nearest_levels"]
 
 ROUNDING = 1e-6
-"""Residual over level below which its estimate from squares says nothing."""
+"""Residual over the longest image below which its estimate from squares says nothing."""
 
 LOOSE = 0.03
 """Relative residual at which a level is known well enough to order it after the wanted one."""
@@ -187,11 +187,14 @@ def nearest_levels(
     while True:
         values, columns = _small_problem(search, target)
         pairs = _ritz_pairs(search, values, columns, wanted + ordered, real)
+        # The estimate is a difference of squares as large as those of the longest image.
+        diagonal = np.diagonal(search.square).real[: search.count]
+        rounding = ROUNDING * float(np.sqrt(diagonal.max()))
         open_pair = None
         for rank, pair in enumerate(pairs):
             exact = rank < wanted
             bound = tolerance if exact else max(tolerance, LOOSE * abs(pair.level - target))
-            if pair.estimate > max(bound, ROUNDING * abs(pair.level)) or (
+            if pair.estimate > max(bound, rounding) or (
                 exact and _residual(search, pair)[1] > bound
             ):
                 open_pair = pair
