@@ -26,7 +26,6 @@ from lbwork.iterative import (
     ChainEquations,
     SectorSolver,
     chain_equations,
-    choose_resources,
     component_matrix,
     nearest_levels,
     whole_space,
@@ -64,7 +63,7 @@ def _map(equations: ChainEquations, solver: SectorSolver, terms: tuple) -> Local
 
 
 def _cumulants(
-    solver: SectorSolver, maps: Sequence[LocalMap], steady: np.ndarray, restart: int, tell: Tell
+    solver: SectorSolver, maps: Sequence[LocalMap], steady: np.ndarray, tell: Tell
 ) -> tuple[np.ndarray, np.ndarray]:
     """Cumulants 1..4 and the relative residuals of the three equations."""
     space = solver.space
@@ -95,8 +94,6 @@ def _cumulants(
         solved = solver.solve(
             right,
             defaults.COUNTING_TOLERANCE * size,
-            limit=defaults.ITERATIVE_LIMIT,
-            restart=restart,
             progress=progress,
         )
         residuals.append(solved.residual / size)
@@ -200,15 +197,13 @@ def counting_statistics(
                 "on the start, break the conserved charge first"
             )
         steady = found.components[0].vector
-        resources = choose_resources(found.components[0].space)
         solver = _TiltedSolver(
             equations,
             whole_space(equations.groups),
             splitting=found.splitting,
-            precision=resources.precision,
         )
         maps = [_map(equations, solver, tilt.derivative(order)) for order in range(1, 5)]
-        cumulants, residuals = _cumulants(solver, maps, steady, resources.restart, say)
+        cumulants, residuals = _cumulants(solver, maps, steady, say)
         density = component_matrix(equations, solver.space, steady)
         norm = max(generator.norm_bound, np.finfo(float).tiny)
         growth = None

@@ -83,14 +83,6 @@ class LocalMap:
                 return table
         return None
 
-    @property
-    def nbytes(self) -> int:
-        """Bytes of the tables."""
-        return sum(
-            sum(array.nbytes for array in lists.arrays()) + (0 if table is None else table.nbytes)
-            for table, lists, _ in self._parts
-        )
-
     def apply(self, vector: np.ndarray) -> np.ndarray:
         """The image of a vector."""
         result = np.zeros(vector.size, dtype=vector.dtype)
@@ -154,11 +146,6 @@ class SectorGenerator:
                 *lists.arrays(),
             )
         self._joined.append((lists.pointer, lists.source))
-
-    @property
-    def nbytes(self) -> int:
-        """Bytes of the tables."""
-        return sum(array.nbytes for array in (*self._shape, *self._tables))
 
     def components(self) -> list[list[int]]:
         """Blocks of the sector that the jumps join, as lists of block numbers."""

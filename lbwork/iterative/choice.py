@@ -1,48 +1,28 @@
-"""Which splitting, which precision, how many basis vectors: decided before the work starts."""
+"""Which splitting: tried on shorter chains before the work starts."""
 
 from __future__ import annotations
-
-from dataclasses import dataclass
 
 import numpy as np
 
 from lbwork import defaults
 from lbwork.errors import LbworkError
-from lbwork.iterative.solver import SPLITTINGS, ChainEquations, SectorSolver, chain_equations
-from lbwork.iterative.space import SectorSpace, whole_space
-from lbwork.provenance import usable_memory
+from lbwork.iterative.solver import (
+    SPLITTINGS,
+    ChainEquations,
+    SectorSolver,
+    chain_equations,
+    part_generators,
+)
+from lbwork.iterative.space import whole_space
 
-__all__ = ["Resources", "choose_resources", "choose_splitting", "trial_applies"]
-
-
-@dataclass(frozen=True)
-class Resources:
-    """``precision`` of basis and preconditioner, ``restart``: basis vectors of one Krylov cycle."""
-
-    precision: type
-    restart: int
-
-
-def choose_resources(space: SectorSpace) -> Resources:
-    """Double precision and an unrestarted basis where that is small, else single precision."""
-    double = space.size * np.dtype(space.dtype).itemsize
-    full = defaults.ITERATIVE_RESTART
-    if (full + 1) * double <= defaults.ITERATIVE_BASIS_BYTES:
-        return Resources(np.float64, full)
-    single = double // 2
-    fits = defaults.ITERATIVE_BASIS_BYTES // single
-    # A short cycle converges slowly; some memory is worth giving for the shortest useful one.
-    affordable = int(0.35 * usable_memory()) // single
-    return Resources(np.float32, max(10, min(full, max(fits, min(42, affordable)))))
+__all__ = ["choose_splitting", "trial_applies"]
 
 
 def trial_applies(equations: ChainEquations, splitting: str) -> int:
     """Applications that the steady state of a short chain takes in its largest component."""
-    space = whole_space(equations.groups)
-    solver = SectorSolver(equations, space, splitting=splitting)
-    largest = max(solver.generator.components(), key=lambda part: space.with_pairs(part).size)
-    if len(largest) < len(space.pairs):
-        solver = SectorSolver(equations, space.with_pairs(largest), splitting=splitting)
+    parts = part_generators(equations, whole_space(equations.groups))
+    largest = max(parts, key=lambda part: part.space.size)
+    solver = SectorSolver(equations, largest.space, generator=largest, splitting=splitting)
     start = solver.space.identity()
     size = float(np.linalg.norm(start))
     right = -solver.apply(start)

@@ -14,8 +14,8 @@ from functools import lru_cache
 import numpy as np
 
 from lbwork import defaults
-from lbwork.iterative.choice import Resources, choose_resources
 from lbwork.iterative.products import multiply
+from lbwork.iterative.resources import Resources, choose_resources
 from lbwork.iterative.solver import ChainEquations
 from lbwork.iterative.space import SectorSpace
 from lbwork.provenance import limited_threads

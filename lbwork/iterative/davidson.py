@@ -3,7 +3,7 @@
 The search space is widened by the preconditioned residual of the wanted Ritz pair and restarted
 with the harmonic vectors nearest to the target (E. R. Davidson, J. Comput. Phys. 17, 87 (1975);
 R. B. Morgan, Linear Algebra Appl. 154-156, 289 (1991); thick restart: A. Stathopoulos, Y. Saad,
-K. Wu, SIAM J. Sci. Comput. 19, 227 (1998); from memory). Converged Schur vectors are locked.
+K. Wu, SIAM J. Sci. Comput. 19, 227 (1998); from memory).
 """
 
 from __future__ import annotations

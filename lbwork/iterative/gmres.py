@@ -25,12 +25,11 @@ LinearMap = Callable[[np.ndarray], np.ndarray]
 @dataclass(frozen=True, eq=False)
 class LinearSolution:
     """``solution`` of ``A x = b``; ``residual``: ``||b - A x||`` recomputed; ``applies``: number of
-    preconditioned applications; ``history``: residual estimate after each of them."""
+    preconditioned applications."""
 
     solution: np.ndarray
     residual: float
     applies: int
-    history: tuple[float, ...]
     converged: bool
 
 
@@ -120,11 +119,11 @@ def gmres(
     solution = np.zeros_like(right_side)
     residual = right_side.copy()
     size = float(np.linalg.norm(residual))
-    history: list[float] = []
+    applies = 0
     basis = np.empty((0, right_side.size), dtype=kind)
     absolute = 0.0 if start is not None else target
-    while size > absolute and len(history) < limit:
-        steps = min(restart, limit - len(history))
+    while size > absolute and applies < limit:
+        steps = min(restart, limit - applies)
         if basis.shape[0] != steps + 1:
             basis = np.empty((steps + 1, right_side.size), dtype=kind)
         # A narrow cycle cannot gain more digits than it carries.
@@ -148,9 +147,9 @@ def gmres(
         solution += correction
         residual = right_side - operator(solution)
         before, size = size, float(np.linalg.norm(residual))
-        history += estimates
+        applies += len(estimates)
         if start is not None:
             absolute = target * float(np.linalg.norm(start + solution))
         if size > 0.5 * before and len(estimates) < restart:
             break
-    return LinearSolution(solution, size, len(history), tuple(history), size <= absolute)
+    return LinearSolution(solution, size, applies, size <= absolute)

@@ -47,6 +47,10 @@ class KetGroups:
         result[..., cyclic] %= self.moduli[cyclic]
         return result
 
+    def mirrored(self, difference: tuple[int, ...]) -> tuple[int, ...]:
+        """The charge difference of the adjoint operators, ``-q``."""
+        return tuple(self.reduced(-np.array(difference, dtype=np.int64)).tolist())
+
 
 def _ket_values(charge: Charge, dimension: int) -> tuple[np.ndarray, bool] | None:
     """``f`` (L, d) of a charge ``f(ket) - f(bra)`` or ``f(ket)`` and whether it is the latter."""

@@ -28,11 +28,6 @@ class EnergyBasis:
     energies: tuple[np.ndarray, ...]
     vectors: tuple[np.ndarray, ...]
 
-    @property
-    def nbytes(self) -> int:
-        """Bytes held."""
-        return sum(array.nbytes for array in (*self.energies, *self.vectors))
-
 
 def energy_basis(
     hamiltonian: sparse.csr_matrix, space: SectorSpace, precision: type = np.float64

@@ -23,12 +23,11 @@ VANISHED = 0.02
 n entries has about ``1 / sqrt(n)`` of its length along any zero mode that is not few-body."""
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True)
 class Probe:
-    """``rest``: unit vector of the slowest mode met; ``separation``: ``||L rest||``, zero up to
-    rounding when another zero mode exists; ``applies``: cost."""
+    """``separation``: ``||L z||`` for the slowest unit vector z that was met, zero up to rounding
+    when another zero mode exists; ``applies``: cost."""
 
-    rest: np.ndarray
     separation: float
     applies: int
 
@@ -90,8 +89,6 @@ def probe_kernel(
     *,
     seed: int,
     zero: float,
-    limit: int,
-    restart: int,
     tell: Callable[[str], None] = lambda text: None,
 ) -> Probe:
     """Look for a zero mode besides the known ones (pairs of left and right zero modes).
@@ -114,17 +111,16 @@ def probe_kernel(
         # What has not vanished by the last round is freed of decaying modes as far as a zero mode
         # can be told from a slow one.
         target = max(accuracy * scale, 0.3 * zero * length)
-        solved = solver.solve(image, target, limit=limit, restart=restart, progress=progress)
+        solved = solver.solve(image, target, progress=progress)
         rest = _without(rest - solved.solution, known)
         if np.linalg.norm(rest) < VANISHED / np.sqrt(rest.size):
             break
     rest /= np.linalg.norm(rest)
     separation = float(np.linalg.norm(solver.apply(rest)))
     if separation > zero:
-        solved = solver.solve(rest, 0.1, limit=limit, restart=restart, progress=progress)
+        solved = solver.solve(rest, 0.1, progress=progress)
         slower = _without(solved.solution, known)
         length = float(np.linalg.norm(slower))
         if solved.converged and length > 0:
-            rest = slower / length
-            separation = float(np.linalg.norm(solver.apply(rest)))
-    return Probe(rest, separation, solver.applies - before)
+            separation = float(np.linalg.norm(solver.apply(slower / length)))
+    return Probe(separation, solver.applies - before)

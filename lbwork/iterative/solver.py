@@ -1,4 +1,4 @@
-"""Linear equations with the generator in one sector: splittings, their choice, their cost."""
+"""Linear equations with the generator in one sector, and the parts that a sector falls into."""
 
 from __future__ import annotations
 
@@ -16,11 +16,12 @@ from lbwork.iterative.gmres import LinearMap, LinearSolution, gmres
 from lbwork.iterative.groups import KetGroups, ket_groups
 from lbwork.iterative.hamiltonian import HamiltonianResolvent, energy_basis
 from lbwork.iterative.local_form import LocalForm, local_form
+from lbwork.iterative.resources import choose_resources
 from lbwork.iterative.space import SectorSpace
 from lbwork.model import Model
 from lbwork.symmetry import SymmetryReport, find_symmetries
 
-__all__ = ["SPLITTINGS", "ChainEquations", "SectorSolver", "chain_equations"]
+__all__ = ["SPLITTINGS", "ChainEquations", "SectorSolver", "chain_equations", "part_generators"]
 
 SPLITTINGS = ("energy", "no-jump")
 """``energy``: (s + i ad_H)(s - D); ``no-jump``: the Sylvester operator of Heff."""
@@ -47,11 +48,19 @@ def chain_equations(model: Model, symmetries: SymmetryReport | None = None) -> C
     return ChainEquations(model, report, local_form(model, report.rotation), ket_groups(report))
 
 
-class SectorSolver:
-    """The generator in one sector with a preconditioner for ``L - level``.
+def part_generators(equations: ChainEquations, space: SectorSpace) -> list[SectorGenerator]:
+    """The generators of the parts of a sector that no jump joins, each with its ``space``."""
+    whole = SectorGenerator(space, equations.form)
+    parts = whole.components()
+    if len(parts) == 1:
+        return [whole]
+    return [SectorGenerator(space.with_pairs(part), equations.form) for part in parts]
 
-    ``precision``: of the preconditioner, float32 or float64. Raises CapacityError when the
-    eigenvectors do not fit in memory.
+
+class SectorSolver:
+    """The generator in one sector with a preconditioner, in the precision that memory allows.
+
+    ``generator``: that of the sector, where it has been put together already.
     """
 
     def __init__(
@@ -59,14 +68,15 @@ class SectorSolver:
         equations: ChainEquations,
         space: SectorSpace,
         *,
+        generator: SectorGenerator | None = None,
         splitting: str = "energy",
-        precision: type = np.float64,
     ) -> None:
         self.space = space
-        self.splitting = splitting
         self.sites, self.dimension = equations.form.sites, equations.form.dimension
-        self.generator = SectorGenerator(space, equations.form)
+        self.generator = generator or SectorGenerator(space, equations.form)
         self.applies = 0
+        resources = choose_resources(space)
+        self.restart, precision = resources.restart, resources.precision
         kind = precision if space.hermitian else np.result_type(precision, np.complex64)
         self.precision = np.dtype(kind)
         scale = equations.decay
@@ -88,11 +98,6 @@ class SectorSolver:
 
         self._precondition = precondition
 
-    @staticmethod
-    def components(equations: ChainEquations, space: SectorSpace) -> list[list[int]]:
-        """Blocks of a sector that the jumps join; see :meth:`SectorGenerator.components`."""
-        return SectorGenerator(space, equations.form).components()
-
     def apply(self, vector: np.ndarray) -> np.ndarray:
         """``L`` on a vector."""
         return self.generator.apply(vector)
@@ -107,8 +112,8 @@ class SectorSolver:
         right_side: np.ndarray,
         target: float,
         *,
-        limit: int,
-        restart: int,
+        limit: int = defaults.ITERATIVE_LIMIT,
+        restart: int | None = None,
         start: np.ndarray | None = None,
         progress: Callable[[float], None] | None = None,
     ) -> LinearSolution:
@@ -121,7 +126,7 @@ class SectorSolver:
             self.precondition,
             right_side,
             target=target,
-            restart=restart,
+            restart=restart or self.restart,
             limit=limit,
             precision=self.precision.type,
             start=start,

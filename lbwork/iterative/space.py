@@ -64,6 +64,11 @@ class SectorSpace:
         return int(self.offsets[-1])
 
     @property
+    def copies(self) -> int:
+        """Sectors of equal spectrum up to conjugation: 1, or 2 where the adjoints are another."""
+        return 1 if self.groups.mirrored(self.difference) == self.difference else 2
+
+    @property
     def dtype(self) -> type:
         """float64 for Hermitian sectors, else complex128."""
         return np.float64 if self.hermitian else np.complex128
@@ -94,13 +99,13 @@ class SectorSpace:
         )
         return complex(total)
 
-    def to_matrix(self, vector: np.ndarray, out: np.ndarray | None = None) -> np.ndarray:
-        """A vector as an operator, complex128 (D, D); added to ``out`` where given."""
+    def to_matrix(self, vector: np.ndarray) -> np.ndarray:
+        """A vector as an operator, complex128 (D, D)."""
         size = self.groups.order.size
-        result = np.zeros((size, size), dtype=complex) if out is None else out
+        result = np.zeros((size, size), dtype=complex)
         for block, (ket, bra) in zip(self.blocks(vector), self.pairs, strict=True):
             full = hermitian_from_real(block) if self.hermitian else block
-            result[np.ix_(self.kets(ket), self.kets(bra))] += full
+            result[np.ix_(self.kets(ket), self.kets(bra))] = full
         return result
 
     def from_matrix(self, matrix: np.ndarray) -> np.ndarray:
@@ -117,6 +122,10 @@ class SectorSpace:
         return SectorSpace(self.groups, self.difference, pairs, self.hermitian)
 
 
+def _by_size(difference: tuple[int, ...]) -> tuple[int, tuple[int, ...]]:
+    return sum(map(abs, difference)), difference
+
+
 def differences(groups: KetGroups) -> list[tuple[int, ...]]:
     """All charge differences, one of each Hermitian pair (q, -q), zero first."""
     labels = groups.labels
@@ -124,11 +133,10 @@ def differences(groups: KetGroups) -> list[tuple[int, ...]]:
     gaps = groups.reduced(labels[:, None, :] - labels[None, :, :]).reshape(count**2, charges)
     found: list[tuple[int, ...]] = []
     taken: set[tuple[int, ...]] = set()
-    for gap in sorted(map(tuple, np.unique(gaps, axis=0)), key=lambda q: (sum(map(abs, q)), q)):
-        mirror = tuple(int(value) for value in groups.reduced(-np.array(gap, dtype=np.int64)))
-        if mirror not in taken:
-            taken.add(tuple(int(value) for value in gap))
-            found.append(tuple(int(value) for value in gap))
+    for gap in sorted(map(tuple, np.unique(gaps, axis=0).tolist()), key=_by_size):
+        if groups.mirrored(gap) not in taken:
+            taken.add(gap)
+            found.append(gap)
     return found
 
 

@@ -55,11 +55,6 @@ class Propagator:
         self._order = min(defaults.RELAXATION_ORDER, fits, self.size)
         self._step = 0.5 * self._order / max(self.norm, 1e-300)
 
-    @property
-    def basis_bytes(self) -> int:
-        """Bytes of the Krylov basis."""
-        return (self._order + 1) * self.size * np.dtype(self.dtype).itemsize
-
     def forward(self, vector: np.ndarray, time: float) -> np.ndarray:
         """``exp(time L) vector``; raises NotCertifiedError when the tolerance cannot be kept."""
         current: np.ndarray = np.array(vector, dtype=self.dtype)

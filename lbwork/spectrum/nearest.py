@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -17,12 +17,12 @@ from lbwork.iterative import (
     SectorSolver,
     SectorSpace,
     chain_equations,
-    choose_resources,
     closed_chain,
     component_matrix,
     dense_matrix,
     differences,
     nearest_levels,
+    part_generators,
     whole_space,
 )
 from lbwork.model import Model
@@ -41,11 +41,10 @@ _MOST = 8
 
 @dataclass(frozen=True, eq=False)
 class _PartLevels:
-    """Levels of one part of a sector, zero modes taken out; ``copies`` counts the mirror sector."""
+    """Levels of one part of a sector, zero modes taken out."""
 
     space: SectorSpace
     label: str
-    copies: int
     zero_modes: int
     levels: np.ndarray
     vectors: np.ndarray
@@ -62,16 +61,14 @@ def _traces(space: SectorSpace) -> np.ndarray:
     return (identity / np.linalg.norm(identity))[None, :]
 
 
-def _small_part(solver: SectorSolver, label: str, copies: int, zero: float) -> _PartLevels:
+def _small_part(solver: SectorSolver, label: str, zero: float) -> _PartLevels:
     matrix = dense_matrix(solver)
     levels, vectors = np.linalg.eig(matrix)
     order = np.argsort(np.abs(levels))
     levels, vectors = levels[order], vectors[:, order].T
     moving = np.abs(levels) > zero
     null = int(np.sum(~moving))
-    return _PartLevels(
-        solver.space, label, copies, null, levels[moving], vectors[moving], True, np.inf, 0
-    )
+    return _PartLevels(solver.space, label, null, levels[moving], vectors[moving], True, np.inf, 0)
 
 
 def _agreed(first: NearestLevels, second: NearestLevels, number: int, zero: float) -> str:
@@ -87,7 +84,6 @@ def _agreed(first: NearestLevels, second: NearestLevels, number: int, zero: floa
 def _iterated_part(
     solver: SectorSolver,
     label: str,
-    copies: int,
     zero: float,
     tolerance: float,
     options: GapOptions,
@@ -144,7 +140,6 @@ def _iterated_part(
     return _PartLevels(
         solver.space,
         label,
-        copies,
         null + excluded.shape[0],
         best.levels[moving],
         best.vectors[moving],
@@ -173,33 +168,26 @@ def _part_label(equations: ChainEquations, space: SectorSpace, parts: int) -> st
     return ", ".join(words) if words else ("no charge" if parts == 1 else "part without a charge")
 
 
-def _parts(equations: ChainEquations, neutral: bool) -> list[tuple[SectorSpace, str, int]]:
-    """Parts of the sectors to be searched, their labels and numbers of copies."""
-    groups = equations.groups
-    found = []
-    for gap in differences(groups):
+def _solvers(equations: ChainEquations, neutral: bool) -> Iterator[tuple[SectorSolver, str]]:
+    """A solver and a label for each part of the sectors to be searched."""
+    for gap in differences(equations.groups):
         if neutral and any(gap):
             continue
-        space = whole_space(groups, gap)
-        mirror = tuple(groups.reduced(-np.array(gap, dtype=np.int64)).tolist())
-        copies = 1 if mirror == tuple(gap) else 2
-        components = SectorSolver.components(equations, space)
-        for part in components:
-            chosen = space.with_pairs(part) if len(components) > 1 else space
-            found.append((chosen, _part_label(equations, chosen, len(components)), copies))
-    return found
+        parts = part_generators(equations, whole_space(equations.groups, gap))
+        for part in parts:
+            label = _part_label(equations, part.space, len(parts))
+            yield SectorSolver(equations, part.space, generator=part), label
 
 
 def _mode(equations: ChainEquations, part: _PartLevels, vector: np.ndarray) -> np.ndarray:
     """An eigenvector as an operator (D, D) in the written basis, Frobenius norm 1."""
-    mode = component_matrix(equations, part.space, np.ascontiguousarray(vector.real))
-    if part.space.hermitian:
-        if np.iscomplexobj(vector) and np.any(vector.imag):
-            mode = mode + 1j * component_matrix(
-                equations, part.space, np.ascontiguousarray(vector.imag)
-            )
-    else:
+    if not part.space.hermitian:
         mode = component_matrix(equations, part.space, vector)
+    else:
+        mode = component_matrix(equations, part.space, np.ascontiguousarray(vector.real))
+        if np.any(vector.imag):
+            imaginary = np.ascontiguousarray(vector.imag)
+            mode = mode + 1j * component_matrix(equations, part.space, imaginary)
     return np.asarray(mode / np.linalg.norm(mode))
 
 
@@ -223,13 +211,11 @@ def nearest_gap(
         if closed is not None:
             return _closed_gap(model, closed, zero)
         parts = []
-        for space, label, copies in _parts(equations, neutral):
-            precision = choose_resources(space).precision
-            solver = SectorSolver(equations, space, precision=precision)
-            if space.size <= defaults.ITERATIVE_DENSE_SIZE:
-                parts.append(_small_part(solver, label, copies, zero))
+        for solver, label in _solvers(equations, neutral):
+            if solver.space.size <= defaults.ITERATIVE_DENSE_SIZE:
+                parts.append(_small_part(solver, label, zero))
             else:
-                parts.append(_iterated_part(solver, label, copies, zero, tolerance, options, tell))
+                parts.append(_iterated_part(solver, label, zero, tolerance, options, tell))
         moving = [part for part in parts if part.levels.size]
         if not moving:
             raise NotCertifiedError(f"every level of {model.name} that was met is a zero mode")
@@ -241,11 +227,13 @@ def nearest_gap(
     if level.imag < 0:
         level = level.conjugate()
         mode = mode.conj().T.copy()
-    oscillating = sum(int(np.sum(np.abs(part.levels.real) <= zero)) * part.copies for part in parts)
+    oscillating = sum(
+        int(np.sum(np.abs(part.levels.real) <= zero)) * part.space.copies for part in parts
+    )
     result = GapResult(
         gap=0.0 if oscillating else -level.real,
         eigenvalue=level,
-        zero_modes=sum(part.zero_modes * part.copies for part in parts),
+        zero_modes=sum(part.zero_modes * part.space.copies for part in parts),
         oscillating_modes=oscillating,
         residual=residual,
         residual_space="density matrix",

@@ -15,10 +15,10 @@ from lbwork.iterative import (
     ChainEquations,
     SectorSolver,
     SectorSpace,
-    choose_resources,
     choose_splitting,
     dense_matrix,
     differences,
+    part_generators,
     probe_kernel,
     whole_space,
 )
@@ -77,7 +77,7 @@ def _small_kernel(solver: SectorSolver, zero: float) -> tuple[np.ndarray, float]
 
 
 def _component_state(
-    solver: SectorSolver, zero: float, restart: int, tell: Tell
+    solver: SectorSolver, zero: float, tell: Tell
 ) -> tuple[np.ndarray, float, int, int]:
     """Steady vector of trace 1, separation, applications of solution and of probe."""
     space = solver.space
@@ -99,8 +99,6 @@ def _component_state(
             right,
             defaults.ITERATIVE_TOLERANCE,
             start=start,
-            limit=defaults.ITERATIVE_LIMIT,
-            restart=restart,
             progress=lambda value: tell(
                 f"{solver.applies} applications, residual {value / size:.1e}"
             ),
@@ -113,8 +111,6 @@ def _component_state(
         [(space.identity(), vector)],
         seed=1,
         zero=zero,
-        limit=defaults.ITERATIVE_LIMIT,
-        restart=restart,
         tell=tell,
     )
     if probe.separation <= zero:
@@ -122,11 +118,6 @@ def _component_state(
             f"a part of size {space.size} has a second zero mode ({probe.separation:.1e})"
         )
     return vector, probe.separation, applies, probe.applies
-
-
-def _joined_solver(equations: ChainEquations, space: SectorSpace, splitting: str) -> SectorSolver:
-    resources = choose_resources(space)
-    return SectorSolver(equations, space, splitting=splitting, precision=resources.precision)
 
 
 def _same_spectrum(first: ComponentState, second: ComponentState) -> bool:
@@ -182,26 +173,15 @@ def _coherences(
 ) -> tuple[int, float, int, int]:
     """Zero modes in charged sectors, the slowest other mode, sectors searched, applications."""
     count, separation, searched, applies = 0, np.inf, 0, 0
-    groups = equations.groups
     for space in _open_sectors(equations, components, states):
-        mirror = tuple(groups.reduced(-np.array(space.difference, dtype=np.int64)).tolist())
-        copies = 1 if mirror == space.difference else 2
         searched += 1
-        resources = choose_resources(space)
-        solver = SectorSolver(equations, space, precision=resources.precision)
+        solver = SectorSolver(equations, space)
         if space.size <= defaults.ITERATIVE_DENSE_SIZE:
             kernel, following = _small_kernel(solver, zero)
-            count += copies * kernel.shape[1]
+            count += space.copies * kernel.shape[1]
             separation = min(separation, following)
             continue
-        probe = probe_kernel(
-            solver,
-            [],
-            seed=2,
-            zero=zero,
-            limit=defaults.ITERATIVE_LIMIT,
-            restart=resources.restart,
-        )
+        probe = probe_kernel(solver, [], seed=2, zero=zero)
         applies += probe.applies
         if probe.separation <= zero:
             raise DegenerateComponent(
@@ -220,27 +200,22 @@ def iterative_states(
     ``zero``: ``||L z||`` of a unit vector below which it is a zero mode. Raises DegenerateComponent
     where one component has several, CapacityError where vectors do not fit.
     """
-    space = whole_space(equations.groups)
     chosen = choose_splitting(equations) if splitting is None else splitting
-    whole = _joined_solver(equations, space, chosen)
-    components = whole.generator.components()
+    components = part_generators(equations, whole_space(equations.groups))
     states: list[ComponentState] = []
     applies = probes = 0
     for number, part in enumerate(components, start=1):
-        solver = whole
-        if len(components) > 1:
-            solver = _joined_solver(equations, space.with_pairs(part), chosen)
-        restart = choose_resources(solver.space).restart
+        solver = SectorSolver(equations, part.space, generator=part, splitting=chosen)
         prefix = f"part {number} of {len(components)}: " if len(components) > 1 else ""
 
         def say(text: str, prefix: str = prefix) -> None:
             tell(prefix + text)
 
-        vector, separation, cost, probe_cost = _component_state(solver, zero, restart, say)
+        vector, separation, cost, probe_cost = _component_state(solver, zero, say)
         states.append(ComponentState(solver.space, vector, separation))
         applies += cost
         probes += probe_cost
-    ket_parts = [[space.pairs[index][0] for index in part] for part in components]
+    ket_parts = [[ket for ket, _ in part.space.pairs] for part in components]
     coherences, separation, searched, cost = _coherences(equations, ket_parts, states, zero)
     words = "random starts freed of decaying modes"
     if len(components) > 1:

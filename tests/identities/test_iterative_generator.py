@@ -5,7 +5,7 @@ import pytest
 import scipy.linalg
 
 from lbwork import Lindbladian, catalogue, find_symmetries
-from lbwork.iterative import SectorSolver, chain_equations, differences, whole_space
+from lbwork.iterative import chain_equations, differences, part_generators, whole_space
 from lbwork.iterative.action import LocalMap, SectorGenerator
 from lbwork.iterative.effective import EffectiveResolvent, sylvester_triangular
 from lbwork.iterative.gmres import gmres
@@ -189,4 +189,4 @@ def test_components_follow_the_jumps():
     for model, parts in ((kept, 5), (driven_chain(4), 1)):
         equations = chain_equations(model)
         space = whole_space(equations.groups)
-        assert len(SectorSolver.components(equations, space)) == parts
+        assert len(part_generators(equations, space)) == parts
